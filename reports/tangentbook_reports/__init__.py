@@ -1,0 +1,82 @@
+"""Reports as documents: made of typed blocks, written as markdown, read back without loss."""
+
+from tangentbook_reports.compose import (
+    Line,
+    Part,
+    bullets,
+    code,
+    emphasis,
+    heading,
+    numbered,
+    para,
+    strong,
+    table,
+    text,
+)
+from tangentbook_reports.document import (
+    Align,
+    Block,
+    Bullets,
+    DisplayMath,
+    Document,
+    Fence,
+    Figure,
+    Heading,
+    Numbered,
+    Paragraph,
+    Table,
+)
+from tangentbook_reports.errors import UnreadableReport
+from tangentbook_reports.read import read
+from tangentbook_reports.sections import Section, find_fence, find_fences, sections
+from tangentbook_reports.spans import (
+    Code,
+    Emphasis,
+    Math,
+    Span,
+    Spans,
+    Strong,
+    Text,
+    plain_text,
+)
+from tangentbook_reports.write import write
+
+__all__ = [
+    "Align",
+    "Block",
+    "Bullets",
+    "Code",
+    "DisplayMath",
+    "Document",
+    "Emphasis",
+    "Fence",
+    "Figure",
+    "Heading",
+    "Line",
+    "Math",
+    "Numbered",
+    "Paragraph",
+    "Part",
+    "Section",
+    "Span",
+    "Spans",
+    "Strong",
+    "Table",
+    "Text",
+    "UnreadableReport",
+    "bullets",
+    "code",
+    "emphasis",
+    "find_fence",
+    "find_fences",
+    "heading",
+    "numbered",
+    "para",
+    "plain_text",
+    "read",
+    "sections",
+    "strong",
+    "table",
+    "text",
+    "write",
+]

@@ -1,0 +1,158 @@
+"""Damped Gauss-Newton iteration for the equations of a point.
+
+    step: minimise |D_r (r + J D_c s)|, q+ = q + lambda D_c s
+
+in scaled quantities (D_c: typical sizes, D_r: row equilibration), least squares of any rank by
+SVD for small systems, sparse LU for large square ones. Damping by the natural monotonicity test:
+the simplified step after lambda must be shorter (Deuflhard, "Newton Methods for Nonlinear
+Problems", 2004, sec. 3.3 and 4.3), which does not depend on the scaling of the rows.
+"""
+
+from __future__ import annotations
+
+import warnings
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from scipy.sparse import csc_array, diags_array
+from scipy.sparse.linalg import splu
+
+from tangentbook.analysis.settings import (
+    DENSE_UP_TO,
+    NEWTON_STEPS,
+    NEWTON_TOLERANCE,
+    RANK_TOLERANCE,
+    RESIDUAL_LIMIT,
+    SMALLEST_DAMPING,
+)
+from tangentbook.calculus.evaluate import DomainError
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    import numpy.typing as npt
+
+    from tangentbook.analysis.system import System
+
+    Vector = npt.NDArray[np.float64]
+    Solve = Callable[[Vector], Vector]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Attempt:
+    """Where one start led: `solved` is judged by the residual against its terms."""
+
+    q: Vector
+    solved: bool
+    residual: float
+    steps: int
+    converged: bool
+
+
+def solve(
+    system: System, start: Vector, typical: Vector, low: Vector, high: Vector
+) -> Attempt | None:
+    """Iterate from one start; None where the start lies outside the domain of an equation.
+
+    Args:
+        system: the rows.
+        start: (n,) first values, SI.
+        typical: (n,) typical sizes, SI, positive.
+        low: (n,) hard lower bounds, -inf for none.
+        high: (n,) hard upper bounds, inf for none.
+    """
+    q = np.clip(start, low, high)
+    try:
+        residual, entries = system.both(q)
+    except DomainError:
+        return None
+    converged = False
+    step = 0
+    for step in range(1, NEWTON_STEPS + 1):
+        scale = np.maximum(typical, np.abs(q))
+        back = _least_squares(system, entries, scale)
+        d = back(-residual)
+        length = float(np.linalg.norm(d))
+        if float(np.max(np.abs(d), initial=0.0)) <= NEWTON_TOLERANCE:
+            q = _landed(system, q, np.clip(q + scale * d, low, high))
+            converged = True
+            break
+        moved = _damped(system, q, (scale, d, length), back, (low, high))
+        if moved is None:
+            break
+        q, residual, entries = moved
+    return _judged(system, q, step, converged=converged)
+
+
+def _landed(system: System, q: Vector, last: Vector) -> Vector:
+    """The last full step, unless it leaves the domain."""
+    try:
+        system.both(last)
+    except DomainError:
+        return q
+    return last
+
+
+def _judged(system: System, q: Vector, steps: int, *, converged: bool) -> Attempt:
+    sizes = system.term_sizes(q)
+    residual = float(np.max(np.abs(system.residual(q)) / sizes, initial=0.0))
+    return Attempt(
+        q=q, solved=residual <= RESIDUAL_LIMIT, residual=residual, steps=steps, converged=converged
+    )
+
+
+def _damped(
+    system: System,
+    q: Vector,
+    step: tuple[Vector, Vector, float],
+    back: Solve,
+    bounds: tuple[Vector, Vector],
+) -> tuple[Vector, Vector, Vector] | None:
+    scale, d, length = step
+    damping = 1.0
+    while damping >= SMALLEST_DAMPING:
+        trial = np.clip(q + damping * scale * d, *bounds)
+        try:
+            residual, entries = system.both(trial)
+        except DomainError:
+            damping /= 4
+            continue
+        simplified = float(np.linalg.norm(back(-residual)))
+        if simplified <= (1 - damping / 4) * length and np.any(trial != q):
+            return trial, residual, entries
+        damping /= 2
+    return None
+
+
+def _least_squares(system: System, entries: Vector, scale: Vector) -> Solve:
+    """The map from a right side to the (scaled) step."""
+    rows, columns = system.shape
+    if rows == columns and columns > DENSE_UP_TO:
+        sparse = _sparse_solve(system, entries, scale)
+        if sparse is not None:
+            return sparse
+    matrix = system.dense(entries) * scale
+    weight = _row_weight(np.max(np.abs(matrix), axis=1, initial=0.0))
+    u, s, vt = np.linalg.svd(matrix * weight[:, None], full_matrices=False)
+    keep = s > RANK_TOLERANCE * max(float(s[0]) if len(s) else 0.0, 1e-300)
+    u, s, vt = u[:, keep], s[keep], vt[keep]
+    return lambda right: vt.T @ ((u.T @ (weight * right)) / s)
+
+
+def _sparse_solve(system: System, entries: Vector, scale: Vector) -> Solve | None:
+    matrix = system.sparse(entries) @ diags_array(scale)
+    weight = _row_weight(abs(matrix).max(axis=1).toarray().ravel())
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")
+        try:
+            factor = splu(csc_array(diags_array(weight) @ matrix))
+        except (RuntimeError, Warning):
+            return None
+    if not np.isfinite(factor.solve(np.ones(len(weight)))).all():
+        return None
+    return lambda right: factor.solve(weight * right)
+
+
+def _row_weight(largest: Vector) -> Vector:
+    return 1.0 / np.where(largest > 0, largest, 1.0)

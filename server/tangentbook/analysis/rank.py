@@ -1,0 +1,192 @@
+"""Rank decisions at a point: what is undetermined, redundant, or blocks.
+
+All on the equilibrated Jacobian of the full system (every row, every quantity), so that neither
+units nor sizes of 1e-9 beside 1e9 decide. A direction in the null space is only called
+undetermined if the solution really continues along it; at a double root it does not.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from tangentbook.analysis.settings import RANK_TOLERANCE, RESIDUAL_LIMIT
+from tangentbook.calculus.derive import gradients
+from tangentbook.calculus.evaluate import DomainError, Function
+
+if TYPE_CHECKING:
+    import numpy.typing as npt
+
+    from tangentbook.analysis.system import System
+
+    Vector = npt.NDArray[np.float64]
+    Matrix = npt.NDArray[np.float64]
+
+# a direction is followed this far (in scaled quantities) to see whether the solutions go along
+_FOLLOW = 1e-3
+_SHARE = 1e-6
+
+
+def equilibrate(matrix: Matrix) -> tuple[Matrix, Vector, Vector]:
+    """Rows and columns scaled to largest entry 1 (Ruiz, 2001): scaled, row and column factors."""
+    scaled = matrix.copy()
+    rows, columns = np.ones(matrix.shape[0]), np.ones(matrix.shape[1])
+    for _ in range(12):
+        r = np.sqrt(np.max(np.abs(scaled), axis=1, initial=0.0))
+        c = np.sqrt(np.max(np.abs(scaled), axis=0, initial=0.0))
+        r, c = np.where(r > 0, r, 1.0), np.where(c > 0, c, 1.0)
+        scaled = scaled / r[:, None] / c[None, :]
+        rows, columns = rows / r, columns / c
+    return scaled, rows, columns
+
+
+def _singular(system: System, q: Vector) -> tuple[Matrix, Vector, Matrix, Vector]:
+    _, entries = system.both(q)
+    scaled, _, columns = equilibrate(system.dense(entries))
+    u, s, vt = np.linalg.svd(scaled, full_matrices=True)
+    return u, s, vt, columns
+
+
+def condition(system: System, q: Vector, _typical: Vector) -> float:
+    """Condition number of the equilibrated Jacobian over the free quantities."""
+    if not system.shape[0] or not system.shape[1]:
+        return 1.0
+    _, s, _, _ = _singular(system, q)
+    smallest = s[-1] if len(s) == system.shape[1] else 0.0
+    return float(s[0] / smallest) if smallest > 0 else float("inf")
+
+
+def undetermined(
+    system: System, q: Vector, typical: Vector, low: Vector, high: Vector
+) -> tuple[tuple[str, ...], bool]:
+    """The free quantities that the rows leave open at q, and whether J is singular there."""
+    if not system.shape[1]:
+        return (), False
+    _, s, vt, columns = _singular(system, q)
+    full = np.zeros(system.shape[1])
+    full[: len(s)] = s
+    null = vt[full <= RANK_TOLERANCE * max(float(full[0]), 1e-300)]
+    if not len(null):
+        return (), False
+    # back to quantities relative to their size, where shares can be compared
+    directions = (null * columns) / np.maximum(typical, np.abs(q))
+    directions /= np.linalg.norm(directions, axis=1, keepdims=True)
+    open_ = [d for d in directions if _continues(system, q, d, typical, (low, high))]
+    if not open_:
+        return (), True
+    weight = np.max(np.abs(np.array(open_)), axis=0)
+    names = tuple(n for n, w in zip(system.free, weight, strict=True) if w > _SHARE)
+    return names, True
+
+
+def _continues(
+    system: System,
+    q: Vector,
+    direction: Vector,
+    typical: Vector,
+    bounds: tuple[Vector, Vector],
+) -> bool:
+    """Whether solutions go on along a null direction (a continuum, not a double root)."""
+    scale = np.maximum(typical, np.abs(q))
+    for sign in (1.0, -1.0):
+        trial = q + sign * _FOLLOW * scale * direction
+        if np.any(trial < bounds[0]) or np.any(trial > bounds[1]):
+            continue
+        pinned = int(np.argmax(np.abs(direction)))
+        if _lands_at(system, trial, pinned, scale):
+            return True
+    return False
+
+
+def _lands_at(system: System, trial: Vector, pinned: int, scale: Vector) -> bool:
+    """Gauss-Newton with one quantity pinned: does it reach a solution?"""
+    q = trial.copy()
+    for _ in range(12):
+        try:
+            residual, entries = system.both(q)
+        except DomainError:
+            return False
+        sizes = system.term_sizes(q)
+        if np.max(np.abs(residual) / sizes, initial=0.0) <= RESIDUAL_LIMIT * 1e-3:
+            return True
+        matrix = system.dense(entries) * scale
+        matrix[:, pinned] = 0.0
+        weight = np.max(np.abs(matrix), axis=1, initial=0.0)
+        weight = 1.0 / np.where(weight > 0, weight, 1.0)
+        step = np.linalg.lstsq(matrix * weight[:, None], -residual * weight, rcond=RANK_TOLERANCE)[0]
+        q = q + scale * step
+    return False
+
+
+def _full(system: System, q: Vector) -> tuple[Matrix, Vector, Vector]:
+    """Jacobian of all rows over all columns, residuals, and the sizes of the rows' terms."""
+    conditions, plant = system.conditions, system.plant
+    graph = plant.graph
+    rows = [row.residual for row in conditions.rows]
+    columns = [name for name in conditions.columns if name not in conditions.assumed]
+    position = {name: k for k, name in enumerate(columns)}
+    partials = gradients(graph, rows, columns)
+    entries = [(i, position[n], node) for i, row in enumerate(partials) for n, node in row.items()]
+    function = Function(graph, system.names, [*rows, *(node for _, _, node in entries)])
+    values = np.array(function.floats(system.point(q)))
+    matrix = np.zeros((len(rows), len(columns)))
+    for (i, j, _), value in zip(entries, values[len(rows) :], strict=True):
+        matrix[i, j] = value
+    return matrix, values[: len(rows)], columns_scale(system, q, columns)
+
+
+def columns_scale(system: System, q: Vector, columns: list[str]) -> Vector:
+    """Sizes of the quantities, for the columns of the full Jacobian."""
+    values = dict(zip(system.names, system.point(q), strict=True))
+    return np.array([abs(values[name]) or 1.0 for name in columns])
+
+
+def redundant(system: System, q: Vector, _typical: Vector) -> tuple[str, ...]:
+    """Rows implied by the rows before them: conditions that agree and add nothing."""
+    conditions = system.conditions
+    spare = len(conditions.rows) - (len(conditions.columns) - len(conditions.assumed))
+    if spare <= 0 and len(conditions.rows) > 60:
+        return ()
+    matrix, _, _ = _full(system, q)
+    scaled, _, _ = equilibrate(matrix)
+    # equations first, then rest, then holds: a condition is redundant against what stands before
+    basis = np.zeros((0, matrix.shape[1]))
+    names: list[str] = []
+    for row, label in zip(scaled, (r.label for r in conditions.rows), strict=True):
+        rest = row - basis.T @ (basis @ row)
+        rest = rest - basis.T @ (basis @ rest)
+        norm = float(np.linalg.norm(rest))
+        if norm <= RANK_TOLERANCE * max(float(np.linalg.norm(row)), 1e-300):
+            names.append(label)
+        else:
+            basis = np.vstack([basis, rest / norm])
+    return tuple(names)
+
+
+def blocking(system: System, q: Vector, _typical: Vector) -> tuple[tuple[str, ...], bool]:
+    """The rows that contradict each other at q, and whether that is for want of rank.
+
+    The projection of the residual on the left null space of the whole Jacobian weighs the rows: no
+    change of any quantity can reduce that part.
+    """
+    try:
+        matrix, residual, _ = _full(system, q)
+    except DomainError:
+        return (), False
+    scaled, rows, _ = equilibrate(matrix)
+    u, s, _ = np.linalg.svd(scaled, full_matrices=True)
+    full = np.zeros(matrix.shape[0])
+    full[: len(s)] = s
+    rankless = full <= 1e-6 * max(float(full[0]), 1e-300)
+    left = u[:, rankless]
+    projected = left @ (left.T @ (rows * residual)) if left.size else rows * residual
+    weight = np.abs(projected)
+    largest = float(np.max(weight, initial=0.0))
+    if largest == 0.0:
+        return (), False
+    labels = [row.label for row in system.conditions.rows]
+    names = tuple(label for label, w in zip(labels, weight, strict=True) if w > 1e-3 * largest)
+    free_rank = min(matrix.shape)
+    contradiction = matrix.shape[0] > matrix.shape[1] or int(np.sum(~rankless)) < free_rank
+    return names, bool(contradiction and left.size)

@@ -1,0 +1,55 @@
+"""Seeded starting points: what is guessed or typical first, then a reproducible spread."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from tangentbook.analysis.settings import START_SPREAD, STARTS
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator
+
+    import numpy.typing as npt
+
+    Vector = npt.NDArray[np.float64]
+
+
+def start_points(
+    typical: Vector, declared: npt.NDArray[np.bool_], guess: Vector, low: Vector, high: Vector
+) -> Iterator[Vector]:
+    """Starts in a fixed order.
+
+    Args:
+        typical: (n,) typical sizes, SI.
+        declared: (n,) whether the typical size was declared.
+        guess: (n,) guessed values, NaN where there is none.
+        low: (n,) lower bounds, -inf for none.
+        high: (n,) upper bounds, inf for none.
+    """
+    n = len(typical)
+    guessed = ~np.isnan(guess)
+
+    def placed(values: Vector) -> Vector:
+        inside = np.where(np.isfinite(low) & np.isfinite(high), (low + high) / 2, values)
+        values = np.where((values < low) | (values > high), inside, values)
+        return np.where(guessed, guess, np.clip(values, low, high))
+
+    yield placed(np.where(declared, typical, 0.0))
+    yield placed(typical.copy())
+    random = np.random.default_rng(20240229)  # any constant: the starts must be the same everywhere
+    for _ in range(_count(n) - 2):
+        size = typical * 10.0 ** random.uniform(-START_SPREAD, START_SPREAD, n)
+        sign = np.where(random.uniform(size=n) < 0.7, 1.0, -1.0)
+        values = size * sign
+        both = np.isfinite(low) & np.isfinite(high)
+        spread = np.where(both, low + (high - low) * random.uniform(size=n), values)
+        start = np.where(both, spread, values)
+        # a guess is kept, then loosened: other points near it are worth knowing
+        near = guess * (1 + 0.1 * random.standard_normal(n)) + 0.0
+        yield np.where(guessed, np.clip(near, low, high), placed(start))
+
+
+def _count(n: int) -> int:
+    return next(count for limit, count in STARTS if n <= limit)

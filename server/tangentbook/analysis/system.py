@@ -1,0 +1,160 @@
+"""The equations of a point as numbers: residuals and sparse Jacobian over the free quantities.
+
+    r(q) = residuals of the open rows,  J = dr/dq,  t = sum of |terms| of each row
+
+where q are the free quantities, the fixed ones and the parameters have their values and all
+highest rates are zero. The size t of its own terms is the natural measure of a residual.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+from flint import arb
+from scipy.sparse import csc_array
+
+from tangentbook.calculus.derive import gradients
+from tangentbook.calculus.evaluate import DomainError, Function
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    import numpy.typing as npt
+
+    from tangentbook.analysis.conditions import Conditions
+    from tangentbook.analysis.constants import Constants
+    from tangentbook.calculus.graph import Node
+    from tangentbook.plant.model import Plant
+
+    Vector = npt.NDArray[np.float64]
+    Matrix = npt.NDArray[np.float64]
+
+
+class System:
+    """Residual and Jacobian of one point's open rows; see the module docstring."""
+
+    def __init__(self, plant: Plant, constants: Constants, conditions: Conditions) -> None:
+        self.plant = plant
+        self.constants = constants
+        self.conditions = conditions
+        graph = plant.graph
+        self.free = conditions.free
+        rows = [conditions.rows[k].residual for k in conditions.open_rows]
+        self.names = (*constants.names, *conditions.columns, *plant.rates)
+        partials = gradients(graph, rows, self.free)
+        position = {name: k for k, name in enumerate(self.free)}
+        self.entries = [
+            (i, position[name], node)
+            for i, row in enumerate(partials)
+            for name, node in row.items()
+        ]
+        self.rows = np.array([i for i, _, _ in self.entries], dtype=np.int64)
+        self.cols = np.array([j for _, j, _ in self.entries], dtype=np.int64)
+        self.shape = (len(rows), len(self.free))
+        jacobian = [node for _, _, node in self.entries]
+        self._residual = Function(graph, self.names, rows)
+        self._both = Function(graph, self.names, [*rows, *jacobian])
+        self._terms = Function(graph, self.names, [_size(plant, row) for row in rows])
+        offset = len(constants.names)
+        index = {name: offset + k for k, name in enumerate(conditions.columns)}
+        self._free_at = [index[name] for name in self.free]
+        self._fixed_at = [(index[name], node) for name, node in conditions.fixed.items()]
+        self._template = [*constants.floats, *([0.0] * (len(self.names) - offset))]
+        for at, node in self._fixed_at:
+            self._template[at] = float(constants.value(node).mid())
+
+    def point(self, q: Sequence[float]) -> list[float]:
+        """All values in the order of `names`, in double precision."""
+        values = list(self._template)
+        for at, value in zip(self._free_at, q, strict=True):
+            values[at] = float(value)
+        return values
+
+    def ball_point(self, q: Sequence[arb]) -> list[arb]:
+        """All values in the order of `names`, as balls at the current precision."""
+        offset = len(self.constants.names)
+        values = [*self.constants.balls(), *([arb(0)] * (len(self.names) - offset))]
+        for at, node in self._fixed_at:
+            values[at] = self.constants.value(node)
+        for at, value in zip(self._free_at, q, strict=True):
+            values[at] = value
+        return values
+
+    def residual(self, q: Vector) -> Vector:
+        """r(q).
+
+        Raises:
+            DomainError: an equation has no value there.
+        """
+        return np.array(self._residual.floats(self.point(q)), dtype=np.float64)
+
+    def both(self, q: Vector) -> tuple[Vector, Vector]:
+        """r(q) and the entries of J in the order of `entries`.
+
+        Raises:
+            DomainError: an equation or a derivative has no finite value there.
+        """
+        values = np.array(self._both.floats(self.point(q)), dtype=np.float64)
+        return values[: self.shape[0]], values[self.shape[0] :]
+
+    def term_sizes(self, q: Vector) -> Vector:
+        """The sum of the absolute terms of each row (at least the smallest normal number)."""
+        return np.maximum(np.array(self._terms.floats(self.point(q))), 1e-300)
+
+    def ball_residual(self, q: Sequence[arb]) -> list[arb]:
+        """r over balls."""
+        return self._residual.balls(self.ball_point(q))
+
+    def ball_jacobian(self, q: Sequence[arb]) -> list[arb]:
+        """The entries of J over balls."""
+        return self._both.balls(self.ball_point(q))[self.shape[0] :]
+
+    def ball_term_sizes(self, q: Sequence[arb]) -> list[arb]:
+        """The sums of absolute terms over balls."""
+        return self._terms.balls(self.ball_point(q))
+
+    def dense(self, entries: Vector) -> Matrix:
+        """J as a dense matrix."""
+        matrix = np.zeros(self.shape)
+        matrix[self.rows, self.cols] = entries
+        return matrix
+
+    def sparse(self, entries: Vector) -> csc_array:
+        """J as a sparse matrix."""
+        return csc_array((entries, (self.rows, self.cols)), shape=self.shape)
+
+    def blame(self, q: Vector) -> tuple[str, str] | None:
+        """The first row without a value at q and the expression at fault, if any."""
+        for row, node in zip(self.conditions.open_rows, self._residual.outputs, strict=True):
+            found = first_undefined(self.plant, self.names, node, self.point(q))
+            if found is not None:
+                return self.conditions.rows[row].label, found
+        return None
+
+
+def _size(plant: Plant, residual: Node) -> Node:
+    graph = plant.graph
+    total = graph.const(0)
+    for term in graph.terms(residual):
+        total = graph.add(total, graph.unary("abs", term))
+    return total
+
+
+def first_undefined(
+    plant: Plant, names: Sequence[str], root: Node, values: Sequence[float]
+) -> str | None:
+    """The innermost expression of `root` without a finite value, with its argument's value."""
+    graph = plant.graph
+    for node in graph.reachable([root]):
+        if not graph.children(node):
+            continue
+        try:
+            Function(graph, names, [node]).floats(values)
+        except DomainError:
+            child = graph.children(node)[0]
+            argument = Function(graph, names, [child]).floats(values)[0]
+            return f"{graph.op[node]} of an argument with the value {argument:.6g}"
+        except TypeError:  # a condition is no number
+            continue
+    return None

@@ -1,0 +1,273 @@
+"""The operating point: found, shown to be one, or shown why there is none.
+
+Not the count of conditions decides but rank and consistency of the whole system at the point
+found (or at the closest approach): conditions that agree are redundant, conditions that
+contradict block each other, directions left free are undetermined.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
+
+import numpy as np
+from flint import arb, ctx
+
+from tangentbook.analysis import rank
+from tangentbook.analysis.conditions import Conditions, PointText, understand_point
+from tangentbook.analysis.constants import Constants
+from tangentbook.analysis.newton import Attempt, solve
+from tangentbook.analysis.refine import refine
+from tangentbook.analysis.settings import PRECISION, RESIDUAL_LIMIT
+from tangentbook.analysis.starts import start_points
+from tangentbook.analysis.system import System
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    import numpy.typing as npt
+
+    from tangentbook.plant.model import Plant
+
+    Vector = npt.NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class OperatingPoint:
+    """A point of the equations, SI, in the order of `conditions.columns`.
+
+    `values` are balls whose radius is the estimated error; `first` the same values from the
+    double-precision iteration alone (the other route).
+    """
+
+    plant: Plant
+    constants: Constants
+    conditions: Conditions
+    values: dict[str, arb]
+    first: dict[str, float]
+    residual: float
+    settled: bool
+    conditioning: float
+    redundant: tuple[str, ...]
+    others: tuple[dict[str, float], ...]
+    starts: tuple[int, int]
+    singular: bool
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class NoPoint:
+    """Why there is no operating point, with the closest approach."""
+
+    plant: Plant
+    constants: Constants
+    conditions: Conditions
+    reason: str
+    why: str
+    blocking: tuple[str, ...] = ()
+    undetermined: tuple[str, ...] = ()
+    closest: dict[str, float] = field(default_factory=dict)
+    residual: float | None = None
+
+
+def find_point(plant: Plant, text: PointText) -> OperatingPoint | NoPoint:
+    """Find the operating point that a request describes.
+
+    Raises:
+        PointError: the request itself cannot be understood.
+    """
+    constants = Constants(plant, text.set)
+    conditions = understand_point(plant, text)
+    if "t" in plant.graph.leaves([row.residual for row in conditions.rows]):
+        return NoPoint(
+            plant=plant,
+            constants=constants,
+            conditions=conditions,
+            reason="depends on time",
+            why="the equations contain the time t explicitly, so no values stay at rest",
+        )
+    system = System(plant, constants, conditions)
+    search = _Search(system)
+    attempts = search.run()
+    solved = [a for a in attempts if a.solved]
+    if not solved:
+        return _no_point(search, attempts)
+    chosen = search.nearest(solved)
+    return _point(search, chosen, solved)
+
+
+class _Search:
+    """The starts of one point and what came of them."""
+
+    def __init__(self, system: System) -> None:
+        self.system = system
+        plant, conditions = system.plant, system.conditions
+        value = system.constants.value
+        self.typical = np.ones(len(system.free))
+        self.declared = np.zeros(len(system.free), dtype=np.bool_)
+        self.period = np.full(len(system.free), np.inf)
+        self.guess = np.full(len(system.free), np.nan)
+        self.low = np.full(len(system.free), -np.inf)
+        self.high = np.full(len(system.free), np.inf)
+        for k, name in enumerate(system.free):
+            variable = plant.variables.get(name)
+            unit = plant.unit_of(name)
+            if variable is not None and variable.typical is not None:
+                self.typical[k] = abs(float(value(variable.typical).mid())) or 1.0
+                self.declared[k] = True
+            elif unit is not None:
+                self.typical[k] = float(unit.factor.p) / float(unit.factor.q) * np.pi**unit.pi_power
+            if variable is not None and variable.period is not None:
+                self.period[k] = abs(float(value(variable.period).mid()))
+            if name in conditions.guess:
+                self.guess[k] = float(value(conditions.guess[name]).mid())
+            low, high = conditions.bounds.get(name, (None, None))
+            self.low[k] = -np.inf if low is None else float(value(low).mid())
+            self.high[k] = np.inf if high is None else float(value(high).mid())
+        self.outside = 0
+
+    def run(self) -> list[Attempt]:
+        """All starts, in their fixed order."""
+        found: list[Attempt] = []
+        for start in start_points(self.typical, self.declared, self.guess, self.low, self.high):
+            attempt = solve(self.system, start, self.typical, self.low, self.high)
+            if attempt is None:
+                self.outside += 1
+            else:
+                found.append(attempt)
+            if not len(self.system.free):
+                break
+        return found
+
+    def nearest(self, solved: Sequence[Attempt]) -> Attempt:
+        """The solution nearest to the guess, else the first."""
+        guessed = ~np.isnan(self.guess)
+        if not guessed.any():
+            return solved[0]
+        return min(
+            solved,
+            key=lambda a: float(
+                np.linalg.norm(((a.q - self.guess) / self.typical)[guessed])
+            ),
+        )
+
+    def same(self, a: Vector, b: Vector) -> bool:
+        """Whether two solutions are one point (angles up to their period)."""
+        difference = np.abs(a - b)
+        turning = np.isfinite(self.period)
+        turns = np.where(turning, np.round(difference / np.where(turning, self.period, 1.0)), 0.0)
+        difference = np.abs(difference - turns * np.where(turning, self.period, 0.0))
+        scale = np.maximum(self.typical * 1e-3, np.maximum(np.abs(a), np.abs(b)))
+        return bool(np.all(difference <= 1e-5 * scale))
+
+
+def _point(
+    search: _Search, chosen: Attempt, solved: Sequence[Attempt]
+) -> OperatingPoint | NoPoint:
+    system = search.system
+    conditions = system.conditions
+    loose, singular = rank.undetermined(system, chosen.q, search.typical, search.low, search.high)
+    if loose:
+        names = ", ".join(loose)
+        return NoPoint(
+            plant=system.plant,
+            constants=system.constants,
+            conditions=conditions,
+            reason="undetermined",
+            why=f"the conditions leave {names} undetermined; hold one of them (or another quantity "
+            "that fixes it)",
+            undetermined=loose,
+            closest=_named(search, chosen.q),
+            residual=chosen.residual,
+        )
+    ctx.prec = PRECISION
+    refined = refine(system, chosen.q, search.typical)
+    if refined.residual > RESIDUAL_LIMIT:
+        return _no_point(search, [chosen])
+    values = _values(search, refined.values)
+    others: list[Vector] = []
+    for attempt in solved:
+        if not any(search.same(attempt.q, q) for q in [chosen.q, *others]):
+            others.append(attempt.q)
+    return OperatingPoint(
+        plant=system.plant,
+        constants=system.constants,
+        conditions=conditions,
+        values=values,
+        first=_named(search, chosen.q),
+        residual=refined.residual,
+        settled=refined.settled,
+        conditioning=rank.condition(system, chosen.q, search.typical),
+        redundant=rank.redundant(system, chosen.q, search.typical),
+        others=tuple(_named(search, q) for q in others),
+        starts=(len(solved), len(solved) + search.outside),
+        singular=singular,
+    )
+
+
+def _assumed(search: _Search, name: str) -> arb:
+    guess = search.system.conditions.guess.get(name)
+    return arb(0) if guess is None else search.system.constants.value(guess)
+
+
+def _values(search: _Search, free: Sequence[arb]) -> dict[str, arb]:
+    """All quantities of the point in the order of the columns."""
+    system, conditions = search.system, search.system.conditions
+    found = dict(zip(system.free, free, strict=True))
+    for name in conditions.assumed:
+        found[name] = _assumed(search, name)
+    for name, node in conditions.fixed.items():
+        found[name] = system.constants.value(node)
+    return {name: found[name] for name in conditions.columns}
+
+
+def _named(search: _Search, q: Vector) -> dict[str, float]:
+    values = _values(search, [arb(float(v)) for v in q])
+    return {name: float(value.mid()) for name, value in values.items()}
+
+
+def _no_point(search: _Search, attempts: Sequence[Attempt]) -> NoPoint:
+    system = search.system
+    conditions = system.conditions
+    if not attempts:
+        start = np.clip(search.typical, search.low, search.high)
+        blame = system.blame(start)
+        where = f": {blame[0]} has no value there ({blame[1]})" if blame else ""
+        return NoPoint(
+            plant=system.plant,
+            constants=system.constants,
+            conditions=conditions,
+            reason="outside domain",
+            why=f"every start lies where an equation has no value{where}; give a guess inside the "
+            "domain, or typical sizes",
+            blocking=(blame[0],) if blame else (),
+        )
+    closest = min(attempts, key=lambda a: a.residual)
+    blocking, contradiction = rank.blocking(system, closest.q, search.typical)
+    bounded = [
+        name
+        for name, value, low, high in zip(
+            system.free, closest.q, search.low, search.high, strict=True
+        )
+        if value in (low, high)
+    ]
+    conflict = contradiction and closest.converged and not bounded
+    shown = ", ".join(blocking) or "the equations"
+    if conflict:
+        why = f"these conditions contradict each other: {shown}; drop or change one of the holds"
+    else:
+        limits = f"; at its bound: {', '.join(bounded)}" if bounded else ""
+        why = (
+            f"no start reached a point that meets all conditions (that none exists is not shown); "
+            f"at the closest approach these block each other: {shown}{limits}; try a guess, typical "
+            "sizes or other values"
+        )
+    return NoPoint(
+        plant=system.plant,
+        constants=system.constants,
+        conditions=conditions,
+        reason="conflict" if conflict else "not found",
+        why=why,
+        blocking=blocking,
+        closest=_named(search, closest.q),
+        residual=closest.residual,
+    )

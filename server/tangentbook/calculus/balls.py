@@ -1,0 +1,225 @@
+"""Functions on balls (flint.arb) and on truncated power series over balls (flint.arb_series).
+
+Python-flint returns NaN where a ball leaves the domain, and a few of its functions are hopeless
+on wide balls: tanh of 0 ± 5 comes out as ± 2e4, a power of a ball about 0 as NaN. Monotone
+functions are therefore taken by their endpoints and powers by products. A condition on balls
+is True, False or None (cannot be told); a choice that cannot be told is the union.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, TypeAlias
+
+from flint import arb, arb_series
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+Ball: TypeAlias = "arb | arb_series"
+Truth: TypeAlias = "bool | None"
+
+NAN = arb("nan")
+
+
+def _head(a: Ball) -> arb:
+    """The constant coefficient, or the ball itself."""
+    return a[0] if isinstance(a, arb_series) else a
+
+
+def _nan_like(a: Ball) -> Ball:
+    return arb_series([NAN], a.prec) if isinstance(a, arb_series) else NAN
+
+
+def _by_ends(a: arb, function: Callable[[arb], arb]) -> arb:
+    if a.is_exact():
+        return function(a)
+    low, high = function(arb(a.lower())), function(arb(a.upper()))
+    return low.union(high)
+
+
+def _tanh(a: Ball) -> Ball:
+    if isinstance(a, arb):
+        return _by_ends(a, lambda x: x.tanh())
+    # tanh a = 1 - 2/(exp 2a + 1)
+    return 1 - 2 / ((2 * a).exp() + 1)
+
+
+def _sinh(a: Ball) -> Ball:
+    if isinstance(a, arb):
+        return _by_ends(a, lambda x: x.sinh())
+    return (a.exp() - (-a).exp()) / 2
+
+
+def _cosh(a: Ball) -> Ball:
+    return a.cosh() if isinstance(a, arb) else (a.exp() + (-a).exp()) / 2
+
+
+def _log10(a: Ball) -> Ball:
+    return a.log() / arb(10).log()
+
+
+def _asin(a: Ball) -> Ball:
+    return _by_ends(a, lambda x: x.asin()) if isinstance(a, arb) else a.asin()
+
+
+def _acos(a: Ball) -> Ball:
+    return _by_ends(a, lambda x: x.acos()) if isinstance(a, arb) else a.acos()
+
+
+def _sqrt(a: Ball) -> Ball:
+    head = _head(a)
+    if isinstance(a, arb_series) and head.contains(0):
+        # the series of a square root at 0 does not exist unless the argument is identically 0
+        return _nan_like(a)
+    if isinstance(a, arb) and head.is_zero():
+        return arb(0)
+    return a.sqrt()
+
+
+def _sign_of(a: arb) -> int | None:
+    if a.is_zero():
+        return 0
+    if a > 0:
+        return 1
+    return -1 if a < 0 else None
+
+
+def _sign(a: Ball) -> Ball:
+    sign = _sign_of(_head(a))
+    if sign is None:
+        return arb(-1).union(arb(1)) if isinstance(a, arb) else _nan_like(a)
+    if sign == 0 and isinstance(a, arb_series) and a.length() > 1:
+        return _nan_like(a)
+    return arb(sign)
+
+
+def _abs(a: Ball) -> Ball:
+    if isinstance(a, arb):
+        return abs(a)
+    sign = _sign_of(_head(a))
+    return _nan_like(a) if not sign else a * sign
+
+
+def _minimum(a: Ball, b: Ball) -> Ball:
+    if isinstance(a, arb) and isinstance(b, arb):
+        return a.min(b)
+    return choose(less_equal(a, b), a, b)
+
+
+def _maximum(a: Ball, b: Ball) -> Ball:
+    if isinstance(a, arb) and isinstance(b, arb):
+        return a.max(b)
+    return choose(less_equal(b, a), a, b)
+
+
+def _atan2(y: Ball, x: Ball) -> Ball:
+    head = arb.atan2(_head(y), _head(x))
+    if isinstance(y, arb) and isinstance(x, arb):
+        return head
+    # the slope does not care for the branch: take it from a quotient that exists, keep the head
+    quotient = (y / x).atan() if not _head(x).contains(0) else -((x / y).atan())
+    return quotient - _head(quotient) + head
+
+
+def power(a: Ball, b: Ball) -> Ball:
+    """a^b for a > 0."""
+    if isinstance(a, arb) and isinstance(b, arb):
+        if a.is_zero() and b > 0:
+            return arb(0)
+        return a**b
+    if isinstance(b, arb) and isinstance(a, arb_series):
+        return (a.log() * b).exp()
+    return (b * a.log()).exp()
+
+
+def ipow(a: Ball, n: int) -> Ball:
+    """a to the integer n > 0, by squaring."""
+    result: Ball | None = None
+    while n:
+        if n & 1:
+            result = a if result is None else result * a
+        n >>= 1
+        a = a * a if n else a
+    return result if result is not None else arb(1)
+
+
+def less(a: Ball, b: Ball) -> Truth:
+    """Whether a < b: True, False or None."""
+    x, y = _head(a), _head(b)
+    if x < y:
+        return True
+    return False if x >= y else None
+
+
+def less_equal(a: Ball, b: Ball) -> Truth:
+    """Whether a <= b: True, False or None."""
+    x, y = _head(a), _head(b)
+    if x <= y:
+        return True
+    return False if x > y else None
+
+
+def equal(a: Ball, b: Ball) -> Truth:
+    """Whether a == b: True, False or None."""
+    x, y = _head(a), _head(b)
+    if x.is_exact() and y.is_exact() and x == y:
+        return True
+    return None if x.overlaps(y) else False
+
+
+def negation(a: Truth) -> Truth:
+    """Three-valued not."""
+    return None if a is None else not a
+
+
+def both(a: Truth, b: Truth) -> Truth:
+    """Three-valued and."""
+    if a is False or b is False:
+        return False
+    return None if a is None or b is None else True
+
+
+def either(a: Truth, b: Truth) -> Truth:
+    """Three-valued or."""
+    return negation(both(negation(a), negation(b)))
+
+
+def choose(condition: Truth, a: Ball, b: Ball) -> Ball:
+    """The branch in force; the union where that cannot be told."""
+    if condition is None:
+        if isinstance(a, arb) and isinstance(b, arb):
+            return a.union(b)
+        return NAN
+    return a if condition else b
+
+
+FUNCTIONS: dict[str, Callable[..., object]] = {
+    "sin": lambda a: a.sin(),
+    "cos": lambda a: a.cos(),
+    "tan": lambda a: a.tan(),
+    "asin": _asin,
+    "acos": _acos,
+    "atan": lambda a: a.atan(),
+    "sinh": _sinh,
+    "cosh": _cosh,
+    "tanh": _tanh,
+    "exp": lambda a: a.exp(),
+    "log": lambda a: a.log(),
+    "log10": _log10,
+    "sqrt": _sqrt,
+    "abs": _abs,
+    "sign": _sign,
+    "atan2": _atan2,
+    "min": _minimum,
+    "max": _maximum,
+    "pow": power,
+    "ipow": ipow,
+    "lt": less,
+    "le": less_equal,
+    "eq": equal,
+    "ne": lambda a, b: negation(equal(a, b)),
+    "and": both,
+    "or": either,
+    "not": negation,
+    "if": choose,
+}

@@ -1,0 +1,260 @@
+"""Unit text -> exact factor to coherent SI.
+
+Grammar (after the SI Brochure, 9th edition, 5.4: products by a space or a raised dot, at most one
+solidus unless brackets make it clear):
+
+    unit    = product [ "/" factor ]
+    product = factor { (" " | "*" | "·") factor }
+    factor  = symbol [ "^" integer ] | "(" unit ")" [ "^" integer ] | "1"
+
+What a symbol means comes from the units library; the entries of `_OWN` are those the library
+gives no exact value for (angles: pi is not a decimal) or reads otherwise than the trade does.
+Only the registry is loaded lazily: a plant without units does not pay for it.
+"""
+
+from __future__ import annotations
+
+import functools
+import re
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import TYPE_CHECKING, Any
+
+from flint import fmpq
+
+from tangentbook.errors import DeclarationError
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+Dimension = tuple[tuple[str, int], ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Unit:
+    """A unit: one of it is `factor * pi^pi_power` in coherent SI, plus `offset` for a level.
+
+    `dimension` holds (base, exponent) pairs in SI base units, "cycle" for Hz and rpm.
+    """
+
+    text: str
+    factor: fmpq
+    pi_power: int = 0
+    offset: fmpq = fmpq(0)
+    dimension: Dimension = ()
+
+    @property
+    def has_time(self) -> bool:
+        """Whether the unit's dimension contains time."""
+        return any(base == "s" for base, _ in self.dimension)
+
+
+ONE = Unit(text="1", factor=fmpq(1))
+
+_OWN: dict[str, Unit] = {
+    "1": ONE,
+    "-": ONE,
+    "": ONE,
+    "pu": ONE,
+    "rad": Unit(text="rad", factor=fmpq(1)),
+    "%": Unit(text="%", factor=fmpq(1, 100)),
+    "deg": Unit(text="deg", factor=fmpq(1, 180), pi_power=1),
+    "°": Unit(text="deg", factor=fmpq(1, 180), pi_power=1),
+    "degree": Unit(text="deg", factor=fmpq(1, 180), pi_power=1),
+    "arcmin": Unit(text="arcmin", factor=fmpq(1, 10800), pi_power=1),
+    "arcsec": Unit(text="arcsec", factor=fmpq(1, 648000), pi_power=1),
+    "turn": Unit(text="turn", factor=fmpq(2), pi_power=1),
+    # cycles per time are not 1/s: 2*pi*f makes the angular frequency
+    "Hz": Unit(text="Hz", factor=fmpq(1), dimension=(("cycle", 1), ("s", -1))),
+    "kHz": Unit(text="kHz", factor=fmpq(1000), dimension=(("cycle", 1), ("s", -1))),
+    "MHz": Unit(text="MHz", factor=fmpq(10**6), dimension=(("cycle", 1), ("s", -1))),
+    "rpm": Unit(text="rpm", factor=fmpq(1, 60), dimension=(("cycle", 1), ("s", -1))),
+    "degC": Unit(text="degC", factor=fmpq(1), offset=fmpq(27315, 100), dimension=(("K", 1),)),
+    "°C": Unit(text="degC", factor=fmpq(1), offset=fmpq(27315, 100), dimension=(("K", 1),)),
+    "degF": Unit(
+        text="degF", factor=fmpq(5, 9), offset=fmpq(45967 * 5, 900), dimension=(("K", 1),)
+    ),
+    "kgmol": Unit(text="kgmol", factor=fmpq(1000), dimension=(("mol", 1),)),
+    "lbmol": Unit(text="lbmol", factor=fmpq(45359237, 100000), dimension=(("mol", 1),)),
+    "var": Unit(text="var", factor=fmpq(1), dimension=(("kg", 1), ("m", 2), ("s", -3))),
+    "kvar": Unit(text="kvar", factor=fmpq(1000), dimension=(("kg", 1), ("m", 2), ("s", -3))),
+    "Mvar": Unit(text="Mvar", factor=fmpq(10**6), dimension=(("kg", 1), ("m", 2), ("s", -3))),
+}
+
+# texts the library reads as something no engineer means
+_REFUSED = {
+    "Nm": "N m",
+    "kNm": "kN m",
+    "MNm": "MN m",
+    "Nms": "N m s",
+    "Ws": "W s",
+    "kgm": "kg m",
+    "Ns": "N s",
+    "rev": "turn, or rpm for a speed",
+    "rps": "Hz",
+}
+
+_BASES = {
+    "gram": "kg",
+    "meter": "m",
+    "second": "s",
+    "ampere": "A",
+    "kelvin": "K",
+    "mole": "mol",
+    "candela": "cd",
+}
+
+_SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
+_TOKEN = re.compile(r"\s*(?:(\^-?\d{1,2}|\*\*-?\d{1,2})|([()/*·⋅])|([^\s()/*·⋅^]+))")
+_RAISED = re.compile(r"([⁻]?[⁰¹²³⁴⁵⁶⁷⁸⁹]+)")
+MAX_UNIT_TEXT = 120
+
+
+def parse_unit(text: str, *, where: str = "") -> Unit:
+    """The unit a text means.
+
+    Raises:
+        DeclarationError: not a unit of the grammar, or an unknown symbol; `where` names the place.
+    """
+    try:
+        return _parsed(text.strip())
+    except DeclarationError as error:
+        raise DeclarationError(
+            error.code, error.message, where=where or error.where, hint=error.hint
+        ) from None
+
+
+@functools.lru_cache(maxsize=4096)
+def _parsed(text: str) -> Unit:
+    if len(text) > MAX_UNIT_TEXT:
+        raise _bad(text[:40] + "…", "a unit has at most 120 characters", "write a shorter unit")
+    own = _OWN.get(text)
+    if own is not None:
+        return own
+    raised = _RAISED.sub(lambda m: "^" + m.group(1).translate(_SUPERSCRIPTS), text)
+    parser = _UnitParser(text, raised)
+    unit = parser.whole()
+    return Unit(
+        text=text, factor=unit.factor, pi_power=unit.pi_power, dimension=unit.dimension
+    )
+
+
+def _bad(text: str, problem: str, hint: str) -> DeclarationError:
+    return DeclarationError("unit.text", f"unit {text!r}: {problem}", hint=hint)
+
+
+class _UnitParser:
+    """Recursive descent over the grammar of the module docstring (depth bounded by the length)."""
+
+    def __init__(self, text: str, raised: str) -> None:
+        self.text = text
+        self.tokens: list[str] = []
+        position = 0
+        while position < len(raised):
+            match = _TOKEN.match(raised, position)
+            if match is None or match.end() == position:
+                raise _bad(text, f"cannot read {raised[position:]!r}", 'write as "kg m^2/s"')
+            self.tokens.append(match.group().strip())
+            position = match.end()
+        self.next = 0
+
+    def _peek(self) -> str:
+        return self.tokens[self.next] if self.next < len(self.tokens) else ""
+
+    def whole(self) -> Unit:
+        unit = self._unit()
+        if self._peek():
+            raise _bad(
+                self.text,
+                f"unexpected {self._peek()!r}",
+                'one solidus at most, brackets after it: "W/(m^2 K)", not "W/m^2/K"',
+            )
+        return unit
+
+    def _unit(self) -> Unit:
+        unit = self._factor()
+        while self._peek() not in ("", "/", ")"):
+            if self._peek() in ("*", "·", "⋅"):
+                self.next += 1
+            unit = _times(unit, self._factor(), 1)
+        if self._peek() == "/":
+            self.next += 1
+            unit = _times(unit, self._factor(), -1)
+        return unit
+
+    def _factor(self) -> Unit:
+        token = self._peek()
+        self.next += 1
+        if token == "(":
+            unit = self._unit()
+            if self._peek() != ")":
+                raise _bad(self.text, "a bracket is not closed", 'write as "J/(kg K)"')
+            self.next += 1
+        elif not token or token in ")/*·⋅" or token.startswith(("^", "**")):
+            raise _bad(self.text, "a unit symbol is missing", 'write as "kg m^2/s"')
+        else:
+            unit = _symbol(token, self.text)
+        if self._peek().startswith(("^", "**")):
+            exponent = int(self._peek().lstrip("^*"))
+            self.next += 1
+            unit = _times(ONE, unit, exponent)
+        return unit
+
+
+def _times(a: Unit, b: Unit, power: int) -> Unit:
+    """a * b^power; a level (degC) inside a product counts as its difference."""
+    exponents = dict(a.dimension)
+    for base, exponent in b.dimension:
+        exponents[base] = exponents.get(base, 0) + exponent * power
+    return Unit(
+        text="",
+        factor=a.factor * b.factor**power,
+        pi_power=a.pi_power + b.pi_power * power,
+        dimension=tuple(sorted((k, v) for k, v in exponents.items() if v)),
+    )
+
+
+@functools.lru_cache(maxsize=1)
+def _registry() -> Any:  # noqa: ANN401 - the library's class is generic over its number type
+    from pint import UnitRegistry  # half a second to import: only for plants with such units
+
+    return UnitRegistry(non_int_type=Fraction, cache_folder=None)
+
+
+def _symbol(symbol: str, text: str) -> Unit:
+    own = _OWN.get(symbol)
+    if own is not None:
+        return own
+    if symbol in _REFUSED:
+        raise _bad(text, f"{symbol!r} is not a unit", f"write {_REFUSED[symbol]}")
+    if not re.fullmatch(r"[^\W\d_][\w]*|[µμΩ]\w*|Ω", symbol):
+        raise _bad(text, f"{symbol!r} is not a unit symbol", 'write as "kg m^2/s"')
+    try:
+        factor, base = _registry().get_root_units(symbol)
+    except Exception:  # noqa: BLE001 - the library raises several unrelated classes for unknown symbols
+        raise _bad(text, f"{symbol!r} is not a known unit", _near_unit(symbol)) from None
+    return _from_library(symbol, Fraction(factor), dict(base._units), text)  # noqa: SLF001 - no public mapping
+
+
+def _near_unit(symbol: str) -> str:
+    for known in _OWN:
+        if known and known.casefold() == symbol.casefold():
+            return f"did you mean {known}?"
+    return "unit symbols are case-sensitive: kN, MPa, kg, rad/s, degC, min, h"
+
+
+def _from_library(symbol: str, factor: Fraction, bases: Mapping[str, Any], text: str) -> Unit:
+    dimension: dict[str, int] = {}
+    for base, exponent in bases.items():
+        if base in ("radian", "dimensionless", "count"):
+            continue
+        if base not in _BASES or Fraction(exponent).denominator != 1:
+            raise _bad(text, f"{symbol!r} has no place in the SI base units", "use another unit")
+        dimension[_BASES[base]] = int(exponent)
+        if base == "gram":  # the SI base unit is the kilogram
+            factor /= Fraction(1000) ** int(exponent)
+    return Unit(
+        text=symbol,
+        factor=fmpq(factor.numerator, factor.denominator),
+        dimension=tuple(sorted(dimension.items())),
+    )

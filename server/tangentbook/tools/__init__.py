@@ -1,0 +1,1 @@
+"""One module a tool: request -> analysis -> result and report content."""
