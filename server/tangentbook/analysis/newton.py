@@ -82,7 +82,7 @@ def solve(
         if moved is None:
             break
         q, residual, entries = moved
-    return _judged(system, q, step, converged=converged)
+    return _judged(system, q, typical, step, converged=converged)
 
 
 def _landed(system: System, q: Vector, last: Vector) -> Vector:
@@ -94,8 +94,59 @@ def _landed(system: System, q: Vector, last: Vector) -> Vector:
     return last
 
 
-def _judged(system: System, q: Vector, steps: int, *, converged: bool) -> Attempt:
-    sizes = system.term_sizes(q)
+def descend(
+    system: System, start: Vector, typical: Vector, low: Vector, high: Vector
+) -> Attempt | None:
+    """The closest approach from one start: bounded least squares (trust region).
+
+    Used where the Newton iteration got stuck: it stops at a local minimum of the residual, which
+    is a solution or shows which rows block each other.
+    """
+    from scipy.optimize import least_squares  # slow to import, and only needed here
+
+    start = np.clip(start, low, high)
+    try:
+        weight = 1.0 / system.sizes(start, typical)
+        system.both(start)
+    except DomainError:
+        return None
+
+    def residual(s: Vector) -> Vector:
+        try:
+            return np.clip(weight * system.residual(s * typical), -1e100, 1e100)
+        except DomainError:
+            return np.full(system.shape[0], 1e100)
+
+    def jacobian(s: Vector) -> Vector:
+        try:
+            return system.dense(system.both(s * typical)[1]) * weight[:, None] * typical
+        except DomainError:
+            return np.zeros(system.shape)
+
+    wide = np.where(high > low, high, low + 1e-12 * typical)
+    inside = np.clip(start / typical, low / typical, wide / typical)
+    found = least_squares(
+        residual,
+        inside,
+        jacobian,
+        bounds=(low / typical, wide / typical),
+        x_scale="jac",
+        xtol=1e-15,
+        ftol=1e-15,
+        gtol=1e-15,
+        max_nfev=200,
+    )
+    q = np.clip(found.x * typical, low, high)
+    try:
+        return _judged(system, q, typical, int(found.nfev), converged=found.status > 0)
+    except DomainError:
+        return None
+
+
+def _judged(
+    system: System, q: Vector, typical: Vector, steps: int, *, converged: bool
+) -> Attempt:
+    sizes = system.sizes(q, typical)
     residual = float(np.max(np.abs(system.residual(q)) / sizes, initial=0.0))
     return Attempt(
         q=q, solved=residual <= RESIDUAL_LIMIT, residual=residual, steps=steps, converged=converged

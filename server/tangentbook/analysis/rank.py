@@ -48,11 +48,14 @@ def _singular(system: System, q: Vector) -> tuple[Matrix, Vector, Matrix, Vector
     return u, s, vt, columns
 
 
-def condition(system: System, q: Vector, _typical: Vector) -> float:
+def condition(system: System, q: Vector) -> float:
     """Condition number of the equilibrated Jacobian over the free quantities."""
     if not system.shape[0] or not system.shape[1]:
         return 1.0
-    _, s, _, _ = _singular(system, q)
+    try:
+        _, s, _, _ = _singular(system, q)
+    except DomainError:
+        return float("inf")
     smallest = s[-1] if len(s) == system.shape[1] else 0.0
     return float(s[0] / smallest) if smallest > 0 else float("inf")
 
@@ -63,7 +66,10 @@ def undetermined(
     """The free quantities that the rows leave open at q, and whether J is singular there."""
     if not system.shape[1]:
         return (), False
-    _, s, vt, columns = _singular(system, q)
+    try:
+        _, s, vt, columns = _singular(system, q)
+    except DomainError:
+        return (), True
     full = np.zeros(system.shape[1])
     full[: len(s)] = s
     null = vt[full <= RANK_TOLERANCE * max(float(full[0]), 1e-300)]
@@ -94,20 +100,21 @@ def _continues(
         if np.any(trial < bounds[0]) or np.any(trial > bounds[1]):
             continue
         pinned = int(np.argmax(np.abs(direction)))
-        if _lands_at(system, trial, pinned, scale):
+        if _lands_at(system, trial, pinned, typical):
             return True
     return False
 
 
-def _lands_at(system: System, trial: Vector, pinned: int, scale: Vector) -> bool:
+def _lands_at(system: System, trial: Vector, pinned: int, typical: Vector) -> bool:
     """Gauss-Newton with one quantity pinned: does it reach a solution?"""
     q = trial.copy()
+    scale = np.maximum(typical, np.abs(q))
     for _ in range(12):
         try:
             residual, entries = system.both(q)
         except DomainError:
             return False
-        sizes = system.term_sizes(q)
+        sizes = system.sizes(q, typical)
         if np.max(np.abs(residual) / sizes, initial=0.0) <= RESIDUAL_LIMIT * 1e-3:
             return True
         matrix = system.dense(entries) * scale
@@ -119,8 +126,8 @@ def _lands_at(system: System, trial: Vector, pinned: int, scale: Vector) -> bool
     return False
 
 
-def _full(system: System, q: Vector) -> tuple[Matrix, Vector, Vector]:
-    """Jacobian of all rows over all columns, residuals, and the sizes of the rows' terms."""
+def _full(system: System, q: Vector) -> tuple[Matrix, Vector]:
+    """Jacobian of all rows over all columns, and the residuals."""
     conditions, plant = system.conditions, system.plant
     graph = plant.graph
     rows = [row.residual for row in conditions.rows]
@@ -133,22 +140,19 @@ def _full(system: System, q: Vector) -> tuple[Matrix, Vector, Vector]:
     matrix = np.zeros((len(rows), len(columns)))
     for (i, j, _), value in zip(entries, values[len(rows) :], strict=True):
         matrix[i, j] = value
-    return matrix, values[: len(rows)], columns_scale(system, q, columns)
+    return matrix, values[: len(rows)]
 
 
-def columns_scale(system: System, q: Vector, columns: list[str]) -> Vector:
-    """Sizes of the quantities, for the columns of the full Jacobian."""
-    values = dict(zip(system.names, system.point(q), strict=True))
-    return np.array([abs(values[name]) or 1.0 for name in columns])
-
-
-def redundant(system: System, q: Vector, _typical: Vector) -> tuple[str, ...]:
+def redundant(system: System, q: Vector) -> tuple[str, ...]:
     """Rows implied by the rows before them: conditions that agree and add nothing."""
     conditions = system.conditions
     spare = len(conditions.rows) - (len(conditions.columns) - len(conditions.assumed))
     if spare <= 0 and len(conditions.rows) > 60:
         return ()
-    matrix, _, _ = _full(system, q)
+    try:
+        matrix, _ = _full(system, q)
+    except DomainError:  # a derivative is infinite here: nothing can be said of ranks
+        return ()
     scaled, _, _ = equilibrate(matrix)
     # equations first, then rest, then holds: a condition is redundant against what stands before
     basis = np.zeros((0, matrix.shape[1]))
@@ -164,14 +168,14 @@ def redundant(system: System, q: Vector, _typical: Vector) -> tuple[str, ...]:
     return tuple(names)
 
 
-def blocking(system: System, q: Vector, _typical: Vector) -> tuple[tuple[str, ...], bool]:
+def blocking(system: System, q: Vector) -> tuple[tuple[str, ...], bool]:
     """The rows that contradict each other at q, and whether that is for want of rank.
 
     The projection of the residual on the left null space of the whole Jacobian weighs the rows: no
     change of any quantity can reduce that part.
     """
     try:
-        matrix, residual, _ = _full(system, q)
+        matrix, residual = _full(system, q)
     except DomainError:
         return (), False
     scaled, rows, _ = equilibrate(matrix)
@@ -186,7 +190,9 @@ def blocking(system: System, q: Vector, _typical: Vector) -> tuple[tuple[str, ..
     if largest == 0.0:
         return (), False
     labels = [row.label for row in system.conditions.rows]
-    names = tuple(label for label, w in zip(labels, weight, strict=True) if w > 1e-3 * largest)
+    named = [label for label, w in zip(labels, weight, strict=True) if w > 1e-3 * largest]
+    # that rates are zero is what "at rest" means; naming it helps nobody
+    names = tuple(label for label in named if not label.endswith("= 0 at rest")) or tuple(named)
     free_rank = min(matrix.shape)
     contradiction = matrix.shape[0] > matrix.shape[1] or int(np.sum(~rankless)) < free_rank
     return names, bool(contradiction and left.size)

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
-from flint import arb
+from flint import arb, arb_mat
 from scipy.sparse.linalg import splu
 
 from tangentbook.analysis.settings import (
@@ -21,6 +21,8 @@ from tangentbook.analysis.settings import (
     RANK_TOLERANCE,
     REFINE_STEPS,
     REFINED_DIGITS_BITS,
+    SLOW_REFINE_STEPS,
+    SLOW_REFINE_UP_TO,
 )
 
 if TYPE_CHECKING:
@@ -33,6 +35,7 @@ if TYPE_CHECKING:
     Vector = npt.NDArray[np.float64]
 
 _GOAL = arb(2) ** -REFINED_DIGITS_BITS
+_HALF = arb(2) ** -110
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -71,8 +74,44 @@ def refine(system: System, q: Vector, typical: Vector) -> Refined:
             c <= abs(v) * _GOAL or c <= f
             for c, v, f in zip(best, values, floors, strict=True)
         )
+    if not settled and len(q) <= SLOW_REFINE_UP_TO:
+        values, best, settled = _crawl(system, values, floors)
+        # half the bits of the arithmetic is all that a multiple root gives
+        best = [
+            c.max((abs(v) + f / _GOAL) * _HALF) for c, v, f in zip(best, values, floors, strict=True)
+        ]
     balls = [_ball(v, c, f) for v, c, f in zip(values, best, floors, strict=True)]
-    return Refined(values=balls, residual=_relative(system, values), settled=settled)
+    return Refined(values=balls, residual=_relative(system, values, q, typical), settled=settled)
+
+
+def _crawl(
+    system: System, values: list[arb], floors: Sequence[arb]
+) -> tuple[list[arb], list[arb], bool]:
+    """Newton with a fresh Jacobian in every pass: at a multiple root each pass still gains a bit."""
+    rows, columns = system.shape
+    change = [abs(v) + f for v, f in zip(values, floors, strict=True)]
+    if rows != columns:
+        return values, change, False
+    for _ in range(SLOW_REFINE_STEPS):
+        matrix = arb_mat(rows, columns)
+        entries = zip(system.entries, system.ball_jacobian(values), strict=True)
+        for (i, j, _), entry in entries:
+            matrix[i, j] = entry.mid()
+        residual = arb_mat(rows, 1, [r.mid() for r in system.ball_residual(values)])
+        try:
+            step = matrix.solve(residual).mid()
+        except ZeroDivisionError:
+            # the Jacobian has become singular to all bits: nothing more to gain
+            break
+        values = [(v - step[k, 0]).mid() for k, v in enumerate(values)]
+        change = [arb(abs(step[k, 0]).upper()) for k in range(columns)]
+        if not all(c.is_finite() for c in change):
+            break
+        if all(
+            c <= abs(v) * _GOAL or c <= f for c, v, f in zip(change, values, floors, strict=True)
+        ):
+            return values, change, True
+    return values, change, False
 
 
 def _ball(value: arb, change: arb, floor: arb) -> arb:
@@ -84,20 +123,13 @@ def _ball(value: arb, change: arb, floor: arb) -> arb:
     return value + arb(0, radius)
 
 
-def _relative(system: System, values: Sequence[arb]) -> float:
-    sizes = system.ball_term_sizes(values)
+def _relative(system: System, values: Sequence[arb], q: Vector, typical: Vector) -> float:
+    """The largest residual at the refined values, each against the size of its row."""
     residual = system.ball_residual(values)
-    worst = 0.0
-    for r, size in zip(residual, sizes, strict=True):
-        top = abs(r).upper()
-        if float(top) == 0.0:
-            continue
-        bottom = float(size.mid())
-        worst = max(worst, float(top) / bottom if bottom > 0 else float("inf"))
-    return worst
-
-
-Solve = "Callable[[list[arb]], list[arb]]"
+    sizes = system.sizes(q, typical)
+    return max(
+        (float((abs(r).upper()) / s) for r, s in zip(residual, sizes, strict=True)), default=0.0
+    )
 
 
 def _inverse(system: System, q: Vector) -> Callable[[list[float]], Vector]:

@@ -5,12 +5,16 @@ from __future__ import annotations
 PRECISION = 256
 """Bits of the ball arithmetic behind printed numbers: 10 digits survive the loss of 50 more."""
 
-STARTS = ((20, 24), (100, 8), (2000, 3))
+STARTS = ((20, 32), (100, 8), (2000, 3))
 """(unknowns up to, starts): enough starts to notice other points on small plants; a start costs a
 sparse factorisation per step on large ones."""
 
-START_SPREAD = 1.5
-"""Random starts lie within 10^±1.5 typical sizes: beyond, `typical` or a guess is called for."""
+START_SPREAD = (-1.5, 3.0)
+"""Random starts lie within 10^-1.5 … 10^3 typical sizes (one declared unit if none is given, which
+is more often too small than too large); beyond, `typical` or a guess is called for."""
+
+SLOW_STARTS = 6
+"""Starts of the least-squares descent when no Newton iteration reached a solution."""
 
 NEWTON_STEPS = 60
 NEWTON_TOLERANCE = 1e-10
@@ -23,13 +27,20 @@ DENSE_UP_TO = 80
 any rank; above, sparse LU with the dense one as fallback."""
 
 RESIDUAL_LIMIT = 1e-9
-"""Largest residual relative to the terms of its equation that still counts as solved in double
-precision (a double root converges to about the square root of the rounding error squared)."""
+"""Largest residual relative to its own size that still counts as solved in double precision (a
+double root is only found to about the square root of the rounding error)."""
+
+REFINED_RESIDUAL_LIMIT = 1e-25
+"""The same once the refinement has settled: 45 digits leave ample room."""
 
 RANK_TOLERANCE = 1e-9
 """Singular values of the equilibrated Jacobian below this times the largest count as zero."""
 
 REFINE_STEPS = 60
+SLOW_REFINE_UP_TO = 40
+SLOW_REFINE_STEPS = 300
+"""At a double root Newton's iteration gains one bit a pass; small systems can afford 300."""
+
 REFINED_DIGITS_BITS = 150
 """Relative accuracy in bits that the refinement aims at: 45 digits, of which 10 are printed."""
 

@@ -30,9 +30,11 @@ def start_points(
     """
     n = len(typical)
     guessed = ~np.isnan(guess)
+    both = np.isfinite(low) & np.isfinite(high)
+    bottom, width = np.where(both, low, 0.0), np.where(both, high, 0.0) - np.where(both, low, 0.0)
 
     def placed(values: Vector) -> Vector:
-        inside = np.where(np.isfinite(low) & np.isfinite(high), (low + high) / 2, values)
+        inside = np.where(both, bottom + width / 2, values)
         values = np.where((values < low) | (values > high), inside, values)
         return np.where(guessed, guess, np.clip(values, low, high))
 
@@ -40,12 +42,9 @@ def start_points(
     yield placed(typical.copy())
     random = np.random.default_rng(20240229)  # any constant: the starts must be the same everywhere
     for _ in range(_count(n) - 2):
-        size = typical * 10.0 ** random.uniform(-START_SPREAD, START_SPREAD, n)
+        size = typical * 10.0 ** random.uniform(*START_SPREAD, n)
         sign = np.where(random.uniform(size=n) < 0.7, 1.0, -1.0)
-        values = size * sign
-        both = np.isfinite(low) & np.isfinite(high)
-        spread = np.where(both, low + (high - low) * random.uniform(size=n), values)
-        start = np.where(both, spread, values)
+        start = np.where(both, bottom + width * random.uniform(size=n), size * sign)
         # a guess is kept, then loosened: other points near it are worth knowing
         near = guess * (1 + 0.1 * random.standard_normal(n)) + 0.0
         yield np.where(guessed, np.clip(near, low, high), placed(start))

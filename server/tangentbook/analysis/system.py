@@ -1,9 +1,10 @@
 """The equations of a point as numbers: residuals and sparse Jacobian over the free quantities.
 
-    r(q) = residuals of the open rows,  J = dr/dq,  t = sum of |terms| of each row
+    r(q) = residuals of the open rows,  J = dr/dq
 
 where q are the free quantities, the fixed ones and the parameters have their values and all
-highest rates are zero. The size t of its own terms is the natural measure of a residual.
+highest rates are zero. A residual is judged against the size of its row: the sum of its absolute
+terms, plus what the size of each quantity in it can change (at sin(pi) the terms alone vanish).
 """
 
 from __future__ import annotations
@@ -56,6 +57,9 @@ class System:
         self._residual = Function(graph, self.names, rows)
         self._both = Function(graph, self.names, [*rows, *jacobian])
         self._terms = Function(graph, self.names, [_size(plant, row) for row in rows])
+        self._slopes = gradients(graph, rows, conditions.columns)
+        slopes = [node for row in self._slopes for node in row.values()]
+        self._slope_values = Function(graph, self.names, slopes)
         offset = len(constants.names)
         index = {name: offset + k for k, name in enumerate(conditions.columns)}
         self._free_at = [index[name] for name in self.free]
@@ -98,9 +102,20 @@ class System:
         values = np.array(self._both.floats(self.point(q)), dtype=np.float64)
         return values[: self.shape[0]], values[self.shape[0] :]
 
-    def term_sizes(self, q: Vector) -> Vector:
-        """The sum of the absolute terms of each row (at least the smallest normal number)."""
-        return np.maximum(np.array(self._terms.floats(self.point(q))), 1e-300)
+    def sizes(self, q: Vector, typical: Vector) -> Vector:
+        """The size of each row at q, against which its residual is judged."""
+        values = self.point(q)
+        sizes = self._terms.floats(values)
+        reach = {n: abs(v) for n, v in zip(self.names, values, strict=True)}
+        for name, floor in zip(self.free, typical, strict=True):
+            reach[name] = max(reach[name], float(floor))
+        try:
+            slopes = iter(self._slope_values.floats(values))
+        except DomainError:
+            slopes = iter([0.0] * len(self._slope_values.outputs))
+        for k, row in enumerate(self._slopes):
+            sizes[k] += sum(abs(next(slopes)) * reach[name] for name in row)
+        return np.maximum(np.array(sizes), 1e-300)
 
     def ball_residual(self, q: Sequence[arb]) -> list[arb]:
         """r over balls."""
@@ -109,10 +124,6 @@ class System:
     def ball_jacobian(self, q: Sequence[arb]) -> list[arb]:
         """The entries of J over balls."""
         return self._both.balls(self.ball_point(q))[self.shape[0] :]
-
-    def ball_term_sizes(self, q: Sequence[arb]) -> list[arb]:
-        """The sums of absolute terms over balls."""
-        return self._terms.balls(self.ball_point(q))
 
     def dense(self, entries: Vector) -> Matrix:
         """J as a dense matrix."""

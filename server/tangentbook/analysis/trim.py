@@ -8,6 +8,7 @@ contradict block each other, directions left free are undetermined.
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from itertools import islice
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -16,9 +17,14 @@ from flint import arb, ctx
 from tangentbook.analysis import rank
 from tangentbook.analysis.conditions import Conditions, PointText, understand_point
 from tangentbook.analysis.constants import Constants
-from tangentbook.analysis.newton import Attempt, solve
+from tangentbook.analysis.newton import Attempt, descend, solve
 from tangentbook.analysis.refine import refine
-from tangentbook.analysis.settings import PRECISION, RESIDUAL_LIMIT
+from tangentbook.analysis.settings import (
+    PRECISION,
+    REFINED_RESIDUAL_LIMIT,
+    RESIDUAL_LIMIT,
+    SLOW_STARTS,
+)
 from tangentbook.analysis.starts import start_points
 from tangentbook.analysis.system import System
 
@@ -118,6 +124,9 @@ class _Search:
                 self.typical[k] = float(unit.factor.p) / float(unit.factor.q) * np.pi**unit.pi_power
             if variable is not None and variable.period is not None:
                 self.period[k] = abs(float(value(variable.period).mid()))
+            elif unit is None or not unit.dimension:
+                # may be an angle: whole turns apart is no other point worth a caution
+                self.period[k] = 2 * np.pi
             if name in conditions.guess:
                 self.guess[k] = float(value(conditions.guess[name]).mid())
             low, high = conditions.bounds.get(name, (None, None))
@@ -135,8 +144,15 @@ class _Search:
             else:
                 found.append(attempt)
             if not len(self.system.free):
-                break
-        return found
+                return found
+        if any(a.solved for a in found):
+            return found
+        starts = start_points(self.typical, self.declared, self.guess, self.low, self.high)
+        slow = (
+            descend(self.system, start, self.typical, self.low, self.high)
+            for start in islice(starts, SLOW_STARTS)
+        )
+        return found + [attempt for attempt in slow if attempt is not None]
 
     def nearest(self, solved: Sequence[Attempt]) -> Attempt:
         """The solution nearest to the guess, else the first."""
@@ -154,8 +170,9 @@ class _Search:
         """Whether two solutions are one point (angles up to their period)."""
         difference = np.abs(a - b)
         turning = np.isfinite(self.period)
-        turns = np.where(turning, np.round(difference / np.where(turning, self.period, 1.0)), 0.0)
-        difference = np.abs(difference - turns * np.where(turning, self.period, 0.0))
+        period = np.where(turning, self.period, 1.0)
+        difference -= np.where(turning, np.round(difference / period) * period, 0.0)
+        difference = np.abs(difference)
         scale = np.maximum(self.typical * 1e-3, np.maximum(np.abs(a), np.abs(b)))
         return bool(np.all(difference <= 1e-5 * scale))
 
@@ -165,7 +182,12 @@ def _point(
 ) -> OperatingPoint | NoPoint:
     system = search.system
     conditions = system.conditions
-    loose, singular = rank.undetermined(system, chosen.q, search.typical, search.low, search.high)
+    bounds = (search.low, search.high)
+    loose, singular = rank.undetermined(system, chosen.q, search.typical, *bounds)
+    if loose:
+        # at a special point some quantities seem fixed; the union over a few points names them all
+        more = [rank.undetermined(system, a.q, search.typical, *bounds)[0] for a in solved[:4]]
+        loose = tuple(n for n in system.free if any(n in names for names in [loose, *more]))
     if loose:
         names = ", ".join(loose)
         return NoPoint(
@@ -181,7 +203,8 @@ def _point(
         )
     ctx.prec = PRECISION
     refined = refine(system, chosen.q, search.typical)
-    if refined.residual > RESIDUAL_LIMIT:
+    limit = REFINED_RESIDUAL_LIMIT if refined.settled else RESIDUAL_LIMIT
+    if refined.residual > limit:
         return _no_point(search, [chosen])
     values = _values(search, refined.values)
     others: list[Vector] = []
@@ -196,8 +219,8 @@ def _point(
         first=_named(search, chosen.q),
         residual=refined.residual,
         settled=refined.settled,
-        conditioning=rank.condition(system, chosen.q, search.typical),
-        redundant=rank.redundant(system, chosen.q, search.typical),
+        conditioning=rank.condition(system, chosen.q),
+        redundant=rank.redundant(system, chosen.q),
         others=tuple(_named(search, q) for q in others),
         starts=(len(solved), len(solved) + search.outside),
         singular=singular,
@@ -242,7 +265,7 @@ def _no_point(search: _Search, attempts: Sequence[Attempt]) -> NoPoint:
             blocking=(blame[0],) if blame else (),
         )
     closest = min(attempts, key=lambda a: a.residual)
-    blocking, contradiction = rank.blocking(system, closest.q, search.typical)
+    blocking, contradiction = rank.blocking(system, closest.q)
     bounded = [
         name
         for name, value, low, high in zip(

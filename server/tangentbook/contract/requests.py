@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar, get_args
 
 from pydantic import Field, ValidationError
 
 from tangentbook.contract.base import Model, Name, Scalar, Text
+from tangentbook.contract.plain import is_object
 from tangentbook.contract.plant import Plant, PlantRef
 from tangentbook.contract.point import Also, Point, PointList
 from tangentbook.errors import RequestError, nearest
+
+if TYPE_CHECKING:
+    from pydantic_core import ErrorDetails
 
 PlantArgument = Plant | PlantRef
 Budget = Field(default=None, gt=0, le=3600, description="seconds after which work stops")
@@ -36,7 +40,8 @@ class Linearize(Model):
     plant: PlantArgument
     point: PointList = Field(default=(Point(),), description="one operating point or a list")
     outputs: dict[Name, Text] | list[Name] | None = Field(
-        default=None, description="outputs of this call instead of the plant's: names or name -> expression"
+        default=None,
+        description="outputs of this call instead of the plant's: names or name -> expression",
     )
     also: tuple[Also, ...] = Field(default=(), description='further answers, as ["dc gain"]')
     frequencies: tuple[Scalar, ...] = ()
@@ -54,7 +59,7 @@ def understand(model: type[Request], arguments: Any) -> Request:  # noqa: ANN401
     Raises:
         RequestError: one line per field, with the nearest known name for a misspelt one.
     """
-    if not isinstance(arguments, dict):
+    if not is_object(arguments):
         raise RequestError(
             "request.type",
             f"the arguments are one JSON object; got {type(arguments).__name__}",
@@ -66,35 +71,65 @@ def understand(model: type[Request], arguments: Any) -> Request:  # noqa: ANN401
         raise _request_error(model, error) from None
 
 
-def _without_union(arguments: dict[str, Any]) -> dict[str, Any]:
-    """Decide between a plant and a reference first, so that messages speak of the one meant."""
-    plant = arguments.get("plant")
-    if not isinstance(plant, dict):
-        return arguments
-    kind = PlantRef if "ref" in plant else Plant
+def understand_plant(kind: type[Request], plant: dict[str, Any]) -> Request:
+    """Validate a plant or a reference to one, so that messages speak of the one meant.
+
+    Raises:
+        RequestError: as `understand`.
+    """
     try:
-        return {**arguments, "plant": kind.model_validate(plant)}
+        return kind.model_validate(plant)
     except ValidationError as error:
         raise _request_error(kind, error, prefix="plant") from None
 
 
-def _request_error(
-    model: type[Model], error: ValidationError, *, prefix: str = ""
-) -> RequestError:
+def _without_union(arguments: dict[str, Any]) -> dict[str, Any]:
+    """Decide between a plant and a reference first: both failing would speak of neither."""
+    if "plant" not in arguments or isinstance(arguments["plant"], (Plant, PlantRef)):
+        return arguments
+    plant: object = arguments["plant"]
+    if not is_object(plant):
+        raise RequestError(
+            "request.field",
+            f"plant: an object is expected; got {type(plant).__name__}",
+            where="plant",
+            hint='send {"name": …, "equations": […], …}, or {"ref": id} for a plant of an '
+            "earlier reply",
+        )
+    kind = PlantRef if "ref" in plant else Plant
+    return {**arguments, "plant": understand_plant(kind, plant)}
+
+
+def _request_error(model: type[Model], error: ValidationError, *, prefix: str = "") -> RequestError:
     details = error.errors(include_url=False, include_input=False)
-    lines = [_line(model, detail, prefix) for detail in details[:6]]
+    # a misspelt field is the likely cause of a missing one beside it, and comes first
+    details.sort(key=lambda detail: detail["type"] != "extra_forbidden")
+    lines = [_line(detail, prefix) for detail in details[:6]]
     if len(details) > 6:
         lines.append(f"and {len(details) - 6} more")
-    where = _place(details[0]["loc"], prefix)
-    first = details[0]
-    hint = "mend the named fields and send the call again"
-    if first["type"] == "extra_forbidden":
-        name = str(first["loc"][-1])
-        hint = nearest(name, _siblings(model, first["loc"])) or hint
-    return RequestError("request.field", "; ".join(lines), where=where, hint=hint)
+    return RequestError(
+        "request.field",
+        "; ".join(lines),
+        where=_place(details[0]["loc"], prefix),
+        hint=_hint(model, details),
+    )
 
 
-def _line(model: type[Model], detail: Any, prefix: str) -> str:  # noqa: ANN401 - pydantic's dict
+def _hint(model: type[Model], details: list[ErrorDetails]) -> str:
+    """What to do: the nearest names of the misspelt fields, missing ones first."""
+    missing = [str(detail["loc"][-1]) for detail in details if detail["type"] == "missing"]
+    offers: list[str] = []
+    for detail in details[:3]:
+        if detail["type"] == "extra_forbidden":
+            name = str(detail["loc"][-1])
+            offer = nearest(name, missing) if missing else ""
+            if not offer.startswith("did you"):
+                offer = nearest(name, _siblings(model, detail["loc"]))
+            offers.append(f"{name}: {offer}" if offer else "")
+    return "; ".join(filter(None, offers)) or "mend the named fields and send the call again"
+
+
+def _line(detail: ErrorDetails, prefix: str) -> str:
     place = _place(detail["loc"], prefix)
     if detail["type"] == "extra_forbidden":
         return f"{place} is not a field of this call"
@@ -111,7 +146,7 @@ def _place(location: tuple[int | str, ...], prefix: str) -> str:
     parts = [prefix] if prefix else []
     for part in location:
         text = str(part)
-        if text.split("[")[0] in _UNION_LABELS or text.startswith("function-"):
+        if text.split("[", maxsplit=1)[0] in _UNION_LABELS or text.startswith("function-"):
             continue
         parts.append("is" if text == "is_" else text)
     return ".".join(parts) or "arguments"
@@ -131,7 +166,7 @@ def _siblings(model: type[Model], location: tuple[int | str, ...]) -> list[str]:
 def _model_of(annotation: Any) -> type[Model] | None:  # noqa: ANN401 - a typing construct
     if isinstance(annotation, type) and issubclass(annotation, Model):
         return annotation
-    for inner in getattr(annotation, "__args__", ()):
+    for inner in get_args(annotation):
         found = _model_of(inner)
         if found is not None:
             return found

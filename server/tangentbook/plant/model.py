@@ -138,9 +138,9 @@ class Plant:
     def unit_of(self, name: str) -> Unit | None:
         """The declared unit of a variable, rate, parameter, definition or output."""
         variable = self.variables.get(name)
-        if variable is not None:
-            return variable.unit
         base = name.rstrip("'")
+        if variable is not None and (variable.unit is not None or base == name):
+            return variable.unit
         if base != name and base in self.variables:
             return self.rate_unit(base, len(name) - len(base))
         for group in (self.parameters, self.definitions):

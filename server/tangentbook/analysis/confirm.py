@@ -1,0 +1,215 @@
+"""Second routes for every entry of A, B, C, D, and the remainder of the linear model.
+
+*Differences.* The original equations are solved again at points displaced by 2^-40 typical sizes
+in 256-bit arithmetic, columns that no row shares together (Curtis, Powell, Reid, 1974). The
+central difference is exact to about 2^-80, and it never sees a derivative node.
+
+*Remainder.* For a displacement d of each column, in ball arithmetic,
+
+    |f(x0 + d) - f(x0) - A d|  <=  sup over the segment of |f''| / 2
+
+where the right side is the second Taylor coefficient enclosed over the whole segment. With steps
+this small the bound is far below any error that matters, so a wrong entry of A must show.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from flint import arb, arb_series
+
+from tangentbook.analysis.rates import NoBranchError, Rates
+from tangentbook.analysis.settings import DIFFERENCE_BITS
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
+    from tangentbook.analysis.linear import LinearModel, Row
+
+_STEP = arb(2) ** -DIFFERENCE_BITS
+_TINY = arb(2) ** -400
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Confirmation:
+    """Largest relative disagreement of a route, and the entry where it occurred."""
+
+    value: float | None
+    entry: str = ""
+    why: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Surroundings:
+    """The point for the second routes: values in SI, unknowns, and typical sizes of the columns."""
+
+    rates: Rates
+    base: Sequence[arb]
+    unknowns: Mapping[str, arb]
+    columns: tuple[str, ...]
+    typical: Mapping[str, arb]
+
+    def displaced(self, group: Sequence[str], factor: int) -> list[arb]:
+        """The base values with the columns of a group moved by `factor` steps."""
+        moved = list(self.base)
+        offset = len(moved) - len(self.columns)
+        for column in group:
+            place = offset + self.columns.index(column)
+            moved[place] = (moved[place] + factor * self.step(column)).mid()
+        return moved
+
+    def step(self, column: str) -> arb:
+        """The displacement of one column."""
+        return self.typical[column] * _STEP
+
+
+def column_groups(model: LinearModel, columns: Sequence[str]) -> list[list[str]]:
+    """Columns that share no row, greedily: they may be displaced together."""
+    rows_of: dict[str, set[str]] = {column: set() for column in columns}
+    for kind, rows in (("x", model.unknowns), ("y", model.output_rows)):
+        for name, row in rows.items():
+            for column in row:
+                rows_of[column].add(kind + name)
+    groups: list[tuple[list[str], set[str]]] = []
+    for column in columns:
+        for members, taken in groups:
+            if not taken & rows_of[column]:
+                members.append(column)
+                taken |= rows_of[column]
+                break
+        else:
+            groups.append(([column], set(rows_of[column])))
+    return [members for members, _ in groups]
+
+
+def by_differences(at: Surroundings, model: LinearModel) -> Confirmation:
+    """Compare every entry with central differences of the original equations."""
+    worst = _Worst(model, at)
+    for group in column_groups(model, at.columns):
+        try:
+            ahead = at.rates.values(at.displaced(group, 1), at.unknowns)
+            back = at.rates.values(at.displaced(group, -1), at.unknowns)
+        except NoBranchError:
+            return Confirmation(value=None, why=f"no values beside the point along {group[0]}")
+        if not _solves(at.rates, ahead) or not _solves(at.rates, back):
+            return Confirmation(value=None, why="the original equations are not met beside the point")
+        offset = len(at.base)
+        for k, name in enumerate(at.rates.plant.unknowns):
+            worst.add(name, group, (ahead[offset + k] - back[offset + k]) / 2)
+        pairs = zip(at.rates.outputs(ahead), at.rates.outputs(back), strict=True)
+        for output, (high, low) in zip(model.outputs, pairs, strict=True):
+            worst.add_output(output, group, (high - low) / 2)
+    return worst.result()
+
+
+def _solves(rates: Rates, values: Sequence[arb]) -> bool:
+    """Whether the values satisfy the original equations, as far as 256 bits can tell."""
+    floor = arb(2) ** -100
+    return all(abs(r) < floor * (1 + _largest(values)) for r in rates.residuals(values))
+
+
+def _largest(values: Sequence[arb]) -> arb:
+    largest = arb(0)
+    for value in values:
+        largest = largest.max(abs(value))
+    return largest
+
+
+def by_remainder(at: Surroundings, model: LinearModel) -> Confirmation:
+    """Compare the remainder of every entry with half the bound of the second derivative."""
+    worst = _Worst(model, at)
+    unit = arb("0.5", "0.5")  # the segment [0, 1]
+    for group in column_groups(model, at.columns):
+        offset = len(at.base) - len(at.columns)
+        base: list[object] = list(at.base)
+        for column in group:
+            place = offset + at.columns.index(column)
+            step = at.step(column)
+            base[place] = arb_series([at.base[place] + step * unit, step, 0], 3)
+        reach = {name: _reach(row, group, at) for name, row in model.unknowns.items()}
+        try:
+            ahead = at.rates.values(at.displaced(group, 1), at.unknowns)
+            series = at.rates.series(base, at.unknowns, reach)
+        except NoBranchError:
+            return Confirmation(value=None, why=f"no enclosure of the unknowns along {group[0]}")
+        bounds = [_second(s) for s in series[len(at.base) :]]
+        here = [at.unknowns[name] for name in at.rates.plant.unknowns]
+        for k, name in enumerate(at.rates.plant.unknowns):
+            worst.add(name, group, ahead[len(at.base) + k] - here[k], bounds[k])
+        outputs = at.rates.output_series(series)
+        start = at.rates.outputs([*at.base, *here])
+        end = at.rates.outputs(ahead)
+        for k, output in enumerate(model.outputs):
+            worst.add_output(output, group, end[k] - start[k], _second(outputs[k]))
+    return worst.result()
+
+
+def _reach(row: Row, group: Sequence[str], at: Surroundings) -> arb:
+    total = _TINY
+    for column in group:
+        if column in row:
+            total += 4 * abs(row[column]) * at.step(column)
+        else:
+            total += at.step(column) * arb(2) ** -60
+    return total
+
+
+def _second(series: object) -> arb:
+    if isinstance(series, arb_series):
+        return arb(abs(series[2]).upper())
+    return arb(0)
+
+
+class _Worst:
+    """Collects the largest relative disagreement over all entries."""
+
+    def __init__(self, model: LinearModel, at: Surroundings) -> None:
+        self.model = model
+        self.at = at
+        self.value = arb(0)
+        self.entry = ""
+
+    def add(self, name: str, group: Sequence[str], change: arb, slack: arb | None = None) -> None:
+        """One row of a group: the change of an unknown against what the model says."""
+        self._compare(name, self.model.unknowns.get(name, {}), group, change, slack)
+
+    def add_output(
+        self, name: str, group: Sequence[str], change: arb, slack: arb | None = None
+    ) -> None:
+        """The same for an output."""
+        self._compare(f"output {name}", self.model.output_rows[name], group, change, slack)
+
+    def _compare(
+        self, name: str, row: Row, group: Sequence[str], change: arb, slack: arb | None
+    ) -> None:
+        predicted = arb(0)
+        own: str | None = None
+        for column in group:
+            if column in row:
+                predicted += row[column] * self.at.step(column)
+                own = column
+        error = abs(change - predicted)
+        if slack is not None:
+            error = (error - slack).max(arb(0))
+        scale = self._scale(row, own)
+        relative = arb(error.upper()) / scale
+        if relative > self.value or not relative.is_finite():
+            self.value = relative
+            self.entry = f"{name} / {own or group[0]}"
+
+    def _scale(self, row: Row, own: str | None) -> arb:
+        """The entry's own effect; the row's largest where the entry is zero."""
+        largest = arb(0)
+        for column, value in row.items():
+            largest = largest.max(arb(abs(value).upper()) * self.at.step(column))
+        if own is not None and not row[own].contains(0):
+            # an entry a million million times smaller than its row is judged as that much smaller
+            return (abs(row[own]) * self.at.step(own)).max(largest * arb("1e-12"))
+        return largest if largest > 0 else _STEP
+
+    def result(self) -> Confirmation:
+        """The finding; None where a disagreement could not be computed."""
+        if not self.value.is_finite():
+            return Confirmation(value=None, why=f"no finite difference at {self.entry}")
+        return Confirmation(value=float(self.value.upper()), entry=self.entry)
