@@ -64,6 +64,10 @@ class Conditions:
     guess: Mapping[str, Node]
     bounds: Mapping[str, tuple[Node | None, Node | None]]
 
+    def held_in_order(self) -> list[str]:
+        """The held plain names, in the order of the columns."""
+        return [name for name in self.columns if name in self.held]
+
 
 def understand_point(plant: Plant, text: PointText) -> Conditions:
     """The rows and columns of a point.

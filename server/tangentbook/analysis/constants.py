@@ -109,24 +109,35 @@ def _resolved(plant: Plant, values: Mapping[str, Node]) -> dict[str, Node]:
     return resolved
 
 
-def exact_text(plant: Plant, constants: Constants, node: Node) -> str | None:
-    """A short exact spelling of a constant (rational, or rational times pi), if it has one."""
+def exact_text(
+    plant: Plant, constants: Constants, node: Node, *, without_pi: int = 0
+) -> str | None:
+    """A short exact spelling of a constant (rational, or rational times pi), if it has one.
+
+    Args:
+        plant: the plant.
+        constants: the configuration.
+        node: the constant.
+        without_pi: this power of pi is divided out first (a value in degrees).
+    """
     graph = plant.graph
     mapping = {graph.var(name): value for name, value in constants.resolved.items()}
     (node,) = graph.substitute([node], mapping)
-    rational = graph.value_of(node)
-    if rational is not None:
-        text = str(rational)
-        return text if len(text) <= 24 else None
+    power = _power_of_pi(plant, node)
+    if power is None:
+        return None
     (quotient,) = graph.substitute([node], {graph.pi(): graph.const(1)})
     factor = graph.value_of(quotient)
-    if factor is None or not _is_multiple_of_pi(plant, node):
+    if factor is None:
         return None
-    return _pi_text(int(factor.p), int(factor.q))
+    if factor != 0:
+        power -= without_pi
+    text = _pi_text(int(factor.p), int(factor.q), power if factor != 0 else 0)
+    return text if text is not None and len(text) <= 24 else None
 
 
-def _is_multiple_of_pi(plant: Plant, node: Node) -> bool:
-    """Whether the node is c*pi: products and quotients with exactly one factor pi."""
+def _power_of_pi(plant: Plant, node: Node) -> int | None:
+    """The power of pi in a product or quotient of rationals and pi; None for anything else."""
     graph = plant.graph
     power = 0
     stack = [(node, 1)]
@@ -140,13 +151,19 @@ def _is_multiple_of_pi(plant: Plant, node: Node) -> bool:
         elif op == "div":
             top, bottom = graph.children(current)
             stack += [(top, sign), (bottom, -sign)]
+        elif op == "ipow":
+            stack.append((graph.children(current)[0], sign * int(str(graph.args[current][1]))))
         elif op == "neg":
             stack.append((graph.children(current)[0], sign))
         elif op != "const":
-            return False
-    return power == 1
+            return None
+    return power
 
 
-def _pi_text(p: int, q: int) -> str:
+def _pi_text(p: int, q: int, power: int) -> str | None:
+    if power == 0:
+        return f"{p}" if q == 1 else f"{p}/{q}"
+    if power != 1:
+        return None
     head = {1: "pi", -1: "-pi"}.get(p, f"{p}*pi")
     return head if q == 1 else f"{head}/{q}"

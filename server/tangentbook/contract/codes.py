@@ -63,6 +63,7 @@ CAUTIONS: dict[str, str] = {
     "no-model": "the point has no single linear model",
     "switch-at-point": "a switch lies exactly at the point",
     "check-failed": "a check value is beyond its limit",
+    "check-not-made": "a check value could not be computed",
     "not-settled": "the digits of the point did not settle",
     "ill-conditioned": "the point is sensitive to small changes",
     "no-units": "no units were declared: magnitudes are taken as given",
