@@ -50,7 +50,7 @@ class Conditions:
 
     `columns` are all quantities of the point, `fixed` those whose value is given (nodes over the
     parameters), `free` those to be found. `rows` is the full system over `columns` (fixed ones
-    included, each with its own row); `open_rows` are the rows that remain once the fixed values
+    included, each with its own row); `asked` are the holds as written; `open_rows` are the rows that remain once the fixed values
     are put in. `assumed` are free quantities on which no row depends.
     """
 
@@ -63,10 +63,8 @@ class Conditions:
     open_rows: tuple[int, ...]
     guess: Mapping[str, Node]
     bounds: Mapping[str, tuple[Node | None, Node | None]]
+    asked: tuple[str, ...] = ()
 
-    def held_in_order(self) -> list[str]:
-        """The held plain names, in the order of the columns."""
-        return [name for name in self.columns if name in self.held]
 
 
 def understand_point(plant: Plant, text: PointText) -> Conditions:
@@ -95,6 +93,7 @@ def understand_point(plant: Plant, text: PointText) -> Conditions:
         open_rows=tuple(open_rows),
         guess={n: _value(plant, n, v, f"guess.{n}") for n, v in text.guess.items()},
         bounds={n: _bounds(plant, n, pair) for n, pair in text.within.items()},
+        asked=tuple(f"{name} = {value}" for name, value in text.hold),
     )
 
 

@@ -56,7 +56,6 @@ class OperatingPoint:
     conditioning: float
     redundant: tuple[str, ...]
     others: tuple[dict[str, float], ...]
-    starts: tuple[int, int]
     singular: bool
 
 
@@ -132,16 +131,13 @@ class _Search:
             low, high = conditions.bounds.get(name, (None, None))
             self.low[k] = -np.inf if low is None else float(value(low).mid())
             self.high[k] = np.inf if high is None else float(value(high).mid())
-        self.outside = 0
 
     def run(self) -> list[Attempt]:
         """All starts, in their fixed order."""
         found: list[Attempt] = []
         for start in start_points(self.typical, self.declared, self.guess, self.low, self.high):
             attempt = solve(self.system, start, self.typical, self.low, self.high)
-            if attempt is None:
-                self.outside += 1
-            else:
+            if attempt is not None:
                 found.append(attempt)
             if not len(self.system.free):
                 return found
@@ -222,7 +218,6 @@ def _point(
         conditioning=rank.condition(system, chosen.q),
         redundant=rank.redundant(system, chosen.q),
         others=tuple(_named(search, q) for q in others),
-        starts=(len(solved), len(solved) + search.outside),
         singular=singular,
     )
 

@@ -8,7 +8,8 @@ from tangentbook.calculus.derive import gradients
 from tangentbook.calculus.typeset import plain_text
 from tangentbook.tools.content import Content
 from tangentbook.tools.derivation import normal_form
-from tangentbook.tools.understood import plant_summary, understand_plant
+from tangentbook.tools.numbers import plural
+from tangentbook.tools.understood import plant_summary, understand_plant, unit_texts
 from tangentbook_reports import Code, heading, para, table
 
 if TYPE_CHECKING:
@@ -30,10 +31,7 @@ def run(request: CheckPlant) -> Content:
         "inputs": list(plant.inputs),
         "outputs": [o.name for o in plant.outputs],
         "algebraic": list(plant.algebraic),
-        "units": {
-            **{n: scales.text(n) for n in (*plant.states, *plant.algebraic, *plant.inputs)},
-            **{o.name: scales.output_text(o.name) for o in plant.outputs},
-        },
+        "units": unit_texts(plant, scales),
         "normal_form": _normal_form(plant),
     }
     if not any(u for u in summary["units"].values()):
@@ -41,9 +39,9 @@ def run(request: CheckPlant) -> Content:
             "no-units", [], "no units were declared: numbers are taken as given, in one coherent set."
         )
     answer = (
-        f"The plant was understood: {_count(len(plant.states), 'state')}, "
-        f"{_count(len(plant.inputs), 'input')}, {_count(len(plant.outputs), 'output')}"
-        + (f", {_count(len(plant.algebraic), 'algebraic unknown')}" if plant.algebraic else "")
+        f"The plant was understood: {plural(len(plant.states), 'state')}, "
+        f"{plural(len(plant.inputs), 'input')}, {plural(len(plant.outputs), 'output')}"
+        + (f", {plural(len(plant.algebraic), 'algebraic unknown')}" if plant.algebraic else "")
         + f"; {_kind(plant)}. Later calls may refer to it as {summary['id']}."
     )
     blocks = _sections(plant, summary)
@@ -55,6 +53,7 @@ def run(request: CheckPlant) -> Content:
         answer=answer,
         question="How is this plant understood, and is anything missing?",
         plant=summary,
+        units=summary["units"],
         points=[],
         findings=findings,
         validity={
@@ -73,10 +72,6 @@ def run(request: CheckPlant) -> Content:
     )
 
 
-def _count(number: int, word: str) -> str:
-    return f"{number} {word}{'' if number == 1 else 's'}"
-
-
 def _kind(plant: Plant) -> str:
     coupled = [b for b in plant.blocks if len(b.equations) > 1]
     if not coupled and all(b.linear for b in plant.blocks):
@@ -87,7 +82,7 @@ def _kind(plant: Plant) -> str:
     if coupled:
         parts.append(f"coupled unknowns are solved together (blocks of {sizes})")
     if implicit:
-        parts.append(f"{_count(implicit, 'block')} not linear in the unknowns")
+        parts.append(f"{plural(implicit, 'block')} not linear in the unknowns")
     return "; ".join(parts)
 
 

@@ -13,6 +13,10 @@ if TYPE_CHECKING:
 
 JSON = dict[str, Any]
 
+_FLOORS = {"point.second-route": 1e-12}
+_FLOOR = 1e-20
+"""Smaller disagreements are rounding of the 256-bit routes (or of the double-precision one)."""
+
 
 @dataclass(slots=True, kw_only=True)
 class Findings:
@@ -30,7 +34,7 @@ class Findings:
             {
                 "code": code,
                 "what": what,
-                "value": bound(value),
+                "value": bound(value, _FLOORS.get(code, _FLOOR)),
                 "limit": limit,
                 "holds": holds,
                 "point": point,
@@ -43,6 +47,11 @@ class Findings:
                 f"{point}: {what}: {value:.2g} is beyond its limit {limit:g}; do not use the "
                 "numbers before the cause is known.",
             )
+
+    def confirmed(self, codes: tuple[str, ...], *, point: str) -> bool:
+        """Whether all these checks were made at the point and hold."""
+        made = {c["code"]: c["holds"] for c in self.checks if c["point"] == point}
+        return all(made.get(code, False) for code in codes)
 
     def missing(self, code: str, why: str, *, point: str) -> None:
         """Record that a check could not be made."""
@@ -68,6 +77,7 @@ class Content:
     answer: str
     question: str
     plant: JSON
+    units: dict[str, str | None]
     points: list[JSON]
     findings: Findings
     validity: JSON

@@ -98,7 +98,11 @@ def point_conditions(found: Linearization) -> list[Block]:
     """What was required at the point, and what that left to be found."""
     point = found.point
     conditions = point.conditions
-    labels = [row.label for row in conditions.rows if not row.label.endswith("= 0 at rest")]
+    labels = [
+        row.label if row.hold is None else conditions.asked[row.hold]
+        for row in conditions.rows
+        if not row.label.endswith("= 0 at rest")
+    ]
     blocks: list[Block] = [
         heading(3, "Conditions of the point"),
         para("All rates are zero. The conditions:"),
@@ -108,8 +112,7 @@ def point_conditions(found: Linearization) -> list[Block]:
         blocks.append(
             para(
                 f"They were solved for {', '.join(conditions.free)} by damped Newton iteration from "
-                f"{point.starts[1]} starts in a fixed order (of which {point.starts[0]} reached a "
-                "solution), then refined in 256-bit arithmetic."
+                "several starts in a fixed order, then refined in 256-bit arithmetic."
             )
         )
     return blocks

@@ -21,10 +21,10 @@ from tangentbook.tools.models import (
     model_result,
     stability_result,
 )
-from tangentbook.tools.numbers import shown
+from tangentbook.tools.numbers import plural, shown
 from tangentbook.tools.tables import eigenvalue_table, matrix_tables, vectors_table
 from tangentbook.tools.trim import answer_line, tolerances
-from tangentbook.tools.understood import NOT_CHECKED, plant_summary, understand_plant
+from tangentbook.tools.understood import NOT_CHECKED, plant_summary, understand_plant, unit_texts
 from tangentbook_reports import heading, para
 
 if TYPE_CHECKING:
@@ -36,6 +36,8 @@ if TYPE_CHECKING:
     from tangentbook.tools.located import Located
     from tangentbook.tools.scales import Scales
     from tangentbook_reports import Block
+
+_CONFIRMING = ("point.residual", "jacobian.second-route", "model.remainder")
 
 SHORT_STATES = 6
 """Up to this many states the short text holds every matrix."""
@@ -59,6 +61,7 @@ def run(request: Linearize) -> Content:
         answer=" ".join(work.answers),
         question=question(request.point, "Which linear model do the equations have at rest"),
         plant=plant_summary(model, plant),
+        units=unit_texts(plant, scales),
         points=entries,
         findings=findings,
         validity={
@@ -174,19 +177,28 @@ class _Work:
             located.entry["stability"] = stability
             eigenvalue_cautions(stability, findings, ident, time)
             self.sections += [heading(3, "Eigenvalues"), *eigenvalue_table(stability, time)]
-        self.answers.append(_answer(located, model, stability))
+        confirmed = findings.confirmed(_CONFIRMING, point=ident)
+        self.answers.append(_answer(located, model, stability, confirmed=confirmed))
         self.lines += _lines(model, entry, stability)
 
 
-def _answer(located: Located, model: DeclaredModel, stability: JSON | None) -> str:
+def _answer(
+    located: Located, model: DeclaredModel, stability: JSON | None, *, confirmed: bool
+) -> str:
     time = model.scales.plant.time.text
     per = "" if time in ("1", "-") else f" per {time}"
-    sizes = (
-        f"{len(model.states)} state(s), {len(model.inputs)} input(s), {len(model.outputs)} output(s)"
+    sizes = ", ".join(
+        (
+            plural(len(model.states), "state"),
+            plural(len(model.inputs), "input"),
+            plural(len(model.outputs), "output"),
+        )
     )
-    text = (
-        f"{located.title}: the equations as stated have at this equilibrium the linear model below "
-        f"({sizes}), every entry confirmed by a second route"
+    text = f"{located.title}: the equations as stated have the linear model below ({sizes}) there, "
+    text += (
+        "every entry confirmed by a second route"
+        if confirmed
+        else "BUT NOT EVERY ENTRY IS CONFIRMED: see the check values and cautions"
     )
     if stability and stability["eigenvalues"]:
         first = stability["eigenvalues"][0]

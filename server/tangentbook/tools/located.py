@@ -9,7 +9,7 @@ from tangentbook.analysis.trim import NoPoint, OperatingPoint, find_point
 from tangentbook.tools.points import no_point_result, point_result, quantity
 from tangentbook.tools.tables import closest_table, point_table
 from tangentbook.tools.understood import point_text
-from tangentbook_reports import bullets, heading, para
+from tangentbook_reports import heading, para
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -65,10 +65,6 @@ def point_section(located: Located, scales: Scales) -> list[Block]:
         return blocks
     blocks.append(para(f"{entry['kind'].capitalize()}: all rates are zero."))
     blocks += point_table(entry)
-    point = located.found
-    if point.conditions.held:
-        held = [quantity(scales, n, point.values[n]) for n in point.conditions.held_in_order()]
-        blocks += [para("Held:"), bullets(*held)]
     return blocks
 
 

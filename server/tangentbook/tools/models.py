@@ -14,7 +14,7 @@ from tangentbook.analysis.settings import (
     REMAINDER_LIMIT,
     SECOND_ROUTE_LIMIT,
 )
-from tangentbook.tools.numbers import rounded
+from tangentbook.tools.numbers import plural, rounded
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -160,7 +160,9 @@ def _eigenvalue(eigenvalue: Eigenvalue, clock: arb) -> JSON:
     printed_error = abs(value.real.mid() - arb(entry["re"])) + abs(
         value.imag.mid() - arb(entry["im"])
     )
-    entry["radius"] = _up(float((printed_error + eigenvalue.radius * clock).upper()))
+    # at least what 25 digits would leave: the bits below differ between machines
+    least = abs(value).upper() * arb("1e-25")
+    entry["radius"] = _up(float((printed_error + eigenvalue.radius * clock + least).upper()))
     return entry
 
 
@@ -226,13 +228,13 @@ def eigenvalue_cautions(stability: JSON, findings: Findings, ident: str, time: s
         findings.caution(
             "eigenvalue-right",
             [],
-            f"{ident}: {sum(e['count'] for e in right)} eigenvalue(s) with positive real part, the "
-            f"rightmost {right[0]['re']:.6g}{per}: with inputs held, deviations grow.",
+            f"{ident}: {plural(sum(e['count'] for e in right), 'eigenvalue')} with positive real part, "
+            f"the rightmost {right[0]['re']:.6g}{per}: with inputs held, deviations grow.",
         )
     if near:
         findings.caution(
             "eigenvalue-near-axis",
             [],
-            f"{ident}: {sum(e['count'] for e in near)} eigenvalue(s) with a real part that is zero or "
-            "too close to zero to tell its side: the linear model alone cannot decide stability.",
+            f"{ident}: {plural(sum(e['count'] for e in near), 'eigenvalue')} with a real part that is "
+            "zero or too close to zero to tell its side: the linear model alone cannot decide stability.",
         )

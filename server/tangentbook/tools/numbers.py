@@ -26,14 +26,22 @@ def shown_float(value: float, digits: int = PEOPLE_DIGITS) -> str:
     return shown(arb(value), digits) if math.isfinite(value) else "–"
 
 
-def bound(value: float | None) -> float:
-    """A check value: the next power of ten up (0 stays 0)."""
-    if value is None or not math.isfinite(value):
+def bound(value: float, floor: float) -> float:
+    """A check value: the next power of ten up, at least `floor` (0 stays 0).
+
+    Below the floor the value is rounding, which differs between machines and says nothing.
+    """
+    if not math.isfinite(value):
         return 1e300
     if value <= 0:
         return 0
     exponent = math.ceil(math.log10(value) - 1e-12)
-    return float(f"1e{max(exponent, -300)}")
+    return max(float(f"1e{exponent}"), floor)
+
+
+def plural(number: int, word: str) -> str:
+    """A count with its noun."""
+    return f"{number} {word}{'' if number == 1 else 's'}"
 
 
 def _decimal(value: arb, digits: int) -> tuple[int, int]:
@@ -90,7 +98,7 @@ def _plain(mantissa: int, exponent: int) -> str:
     sign, digits = ("-" if mantissa < 0 else ""), str(abs(mantissa)).rstrip("0")
     exponent += len(str(abs(mantissa))) - len(digits)
     decade = len(digits) + exponent - 1
-    if -5 <= decade < 7:
+    if -4 <= decade < 7:
         if exponent >= 0:
             return f"{sign}{digits}{'0' * exponent}"
         if decade >= 0:

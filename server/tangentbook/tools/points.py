@@ -86,13 +86,13 @@ def _exact(point: OperatingPoint, scales: Scales, name: str) -> str | None:
 
 
 def margins(point: OperatingPoint, scales: Scales) -> list[JSON]:
-    """Distances from declared limits, lower then upper, in the order of the quantities."""
+    """Distances from declared limits, upper then lower, in the order of the quantities."""
     found: list[JSON] = []
     for name in point.conditions.columns:
         variable = point.plant.variables.get(name)
         if variable is None:
             continue
-        for side, node in (("lower", variable.lower), ("upper", variable.upper)):
+        for side, node in (("upper", variable.upper), ("lower", variable.lower)):
             if node is None:
                 continue
             limit = point.constants.value(node)

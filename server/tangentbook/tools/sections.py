@@ -147,7 +147,7 @@ def _plant_as_read(plant: Plant, content: Content) -> list[Block]:
         [str(k + 1), Code(e.is_), e.label, e.source] for k, e in enumerate(plant.equations)
     ]
     blocks.append(table(["No.", "Equation", "Label", "Source"], rows, align="rlll"))
-    blocks += _quantities(plant, content.plant["roles"])
+    blocks += _quantities(plant, content)
     if plant.definitions:
         rows = [
             [Code(name), Code(d.is_), d.unit or "", d.about, d.source]
@@ -177,7 +177,8 @@ def _value(parameter: Any) -> str:  # noqa: ANN401 - a contract parameter
     return f"{shown} {parameter.unit}" if parameter.unit else str(shown)
 
 
-def _quantities(plant: Plant, roles: dict[str, str]) -> list[Block]:
+def _quantities(plant: Plant, content: Content) -> list[Block]:
+    roles: dict[str, str] = content.plant["roles"]
     declared = {**plant.states, **plant.algebraic, **plant.inputs, **plant.outputs}
     rows: list[list[Any]] = []
     for name, role in roles.items():
@@ -191,7 +192,7 @@ def _quantities(plant: Plant, roles: dict[str, str]) -> list[Block]:
             [
                 Code(name),
                 word,
-                (item.unit or "") if item else "",
+                content.units.get(name) or "",
                 item.about if item else "",
                 item.positive if item else "",
                 item.source if item else "",

@@ -73,7 +73,7 @@ def matrix_tables(model: DeclaredModel, entry: JSON, file: str) -> list[Block]:
             ", ",
             Math(r"\Delta u = u - u_0"),
             ": ",
-            Math(r"\Delta\dot{x} = A\,\Delta x + B\,\Delta u"),
+            Math(r"\Delta\dot{x} = f_0 + A\,\Delta x + B\,\Delta u"),
             ", ",
             Math(r"y = y_0 + C\,\Delta x + D\,\Delta u"),
             f". An entry is the unit of its row{per} (A, B) or the unit of its row (C, D), over the "
@@ -101,7 +101,7 @@ def matrix_tables(model: DeclaredModel, entry: JSON, file: str) -> list[Block]:
     gain = model.gain()
     if gain is not None:
         blocks.append(heading(4, "Gain at rest"))
-        blocks.append(para("Output per input once everything has settled: D - C A", Math("^{-1}"), " B."))
+        blocks.append(para("Output per input once everything has settled: ", Math(r"D - C A^{-1} B"), "."))
         blocks += _matrix("y/u", gain, model.outputs, model.inputs)
     elif "dc_gain_note" in entry:
         blocks.append(heading(4, "Gain at rest"))

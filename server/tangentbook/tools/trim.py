@@ -17,7 +17,7 @@ from tangentbook.tools.located import (
 )
 from tangentbook.tools.numbers import shown_float
 from tangentbook.tools.points import quantity, sensitivity_result
-from tangentbook.tools.understood import NOT_CHECKED, plant_summary, understand_plant
+from tangentbook.tools.understood import NOT_CHECKED, plant_summary, understand_plant, unit_texts
 from tangentbook_reports import Code, heading, para, table
 
 if TYPE_CHECKING:
@@ -49,6 +49,7 @@ def run(request: Trim) -> Content:
         answer=answer,
         question=question(request.point, "Where are the equations at rest"),
         plant=plant_summary(model, plant),
+        units=unit_texts(plant, scales),
         points=entries,
         findings=findings,
         validity={

@@ -55,6 +55,14 @@ def plant_summary(model: PlantModel, plant: Plant) -> JSON:
     return {"name": plant.name, "id": plant_id(model), "roles": dict(plant.roles)}
 
 
+def unit_texts(plant: Plant, scales: Scales) -> dict[str, str | None]:
+    """The units of states, algebraic unknowns, inputs and outputs by name."""
+    return {
+        **{o.name: scales.output_text(o.name) for o in plant.outputs},
+        **{n: scales.text(n) for n in (*plant.states, *plant.algebraic, *plant.inputs)},
+    }
+
+
 def point_text(point: Point) -> PointText:
     """The point of a request as plain values.
 
