@@ -179,7 +179,7 @@ def balloon() -> Case:
             hold=tuple((name, 0) for name in inputs),
             guess={**dict.fromkeys(states, 0.0), **guess},
         ),
-        near={**dict.fromkeys((*states, *inputs), 0.0), **guess},
+        near={name: 0.01 + 0.003 * k for k, name in enumerate((*states, *inputs))} | guess,
     )
 
 

@@ -105,8 +105,8 @@ def by_differences(at: Surroundings, model: LinearModel) -> Confirmation:
 
 def _solves(rates: Rates, values: Sequence[arb]) -> bool:
     """Whether the values satisfy the original equations, as far as 256 bits can tell."""
-    floor = arb(2) ** -100
-    return all(abs(r) < floor * (1 + _largest(values)) for r in rates.residuals(values))
+    limit = arb(2) ** -100 * (1 + _largest(values))
+    return all(abs(r) < limit for r in rates.residuals(values))
 
 
 def _largest(values: Sequence[arb]) -> arb:

@@ -7,6 +7,7 @@ undetermined if the solution really continues along it; at a double root it does
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -48,42 +49,39 @@ def _singular(system: System, q: Vector) -> tuple[Matrix, Vector, Matrix, Vector
     return u, s, vt, columns
 
 
-def condition(system: System, q: Vector) -> float:
-    """Condition number of the equilibrated Jacobian over the free quantities."""
-    if not system.shape[0] or not system.shape[1]:
-        return 1.0
-    try:
-        _, s, _, _ = _singular(system, q)
-    except DomainError:
-        return float("inf")
-    smallest = s[-1] if len(s) == system.shape[1] else 0.0
-    return float(s[0] / smallest) if smallest > 0 else float("inf")
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Freedom:
+    """What the rows leave open at a point: the loose quantities, whether J is singular there, and
+    the condition number of the equilibrated J."""
+
+    loose: tuple[str, ...]
+    singular: bool
+    conditioning: float
 
 
-def undetermined(
-    system: System, q: Vector, typical: Vector, low: Vector, high: Vector
-) -> tuple[tuple[str, ...], bool]:
-    """The free quantities that the rows leave open at q, and whether J is singular there."""
+def freedom(system: System, q: Vector, typical: Vector, low: Vector, high: Vector) -> Freedom:
+    """The free quantities that the rows leave open at q, and how well they fix the others."""
     if not system.shape[1]:
-        return (), False
+        return Freedom(loose=(), singular=False, conditioning=1.0)
     try:
         _, s, vt, columns = _singular(system, q)
     except DomainError:
-        return (), True
+        return Freedom(loose=(), singular=True, conditioning=float("inf"))
     full = np.zeros(system.shape[1])
     full[: len(s)] = s
     null = vt[full <= RANK_TOLERANCE * max(float(full[0]), 1e-300)]
+    conditioning = float(full[0] / full[-1]) if full[-1] > 0 else float("inf")
     if not len(null):
-        return (), False
+        return Freedom(loose=(), singular=False, conditioning=conditioning)
     # back to quantities relative to their size, where shares can be compared
     directions = (null * columns) / np.maximum(typical, np.abs(q))
     directions /= np.linalg.norm(directions, axis=1, keepdims=True)
     open_ = [d for d in directions if _continues(system, q, d, typical, (low, high))]
     if not open_:
-        return (), True
+        return Freedom(loose=(), singular=True, conditioning=conditioning)
     weight = np.max(np.abs(np.array(open_)), axis=0)
     names = tuple(n for n, w in zip(system.free, weight, strict=True) if w > _SHARE)
-    return names, True
+    return Freedom(loose=names, singular=True, conditioning=conditioning)
 
 
 def _continues(

@@ -179,10 +179,11 @@ def _point(
     system = search.system
     conditions = system.conditions
     bounds = (search.low, search.high)
-    loose, singular = rank.undetermined(system, chosen.q, search.typical, *bounds)
+    freedom = rank.freedom(system, chosen.q, search.typical, *bounds)
+    loose = freedom.loose
     if loose:
         # at a special point some quantities seem fixed; the union over a few points names them all
-        more = [rank.undetermined(system, a.q, search.typical, *bounds)[0] for a in solved[:4]]
+        more = [rank.freedom(system, a.q, search.typical, *bounds).loose for a in solved[:4]]
         loose = tuple(n for n in system.free if any(n in names for names in [loose, *more]))
     if loose:
         names = ", ".join(loose)
@@ -215,10 +216,10 @@ def _point(
         first=_named(search, chosen.q),
         residual=refined.residual,
         settled=refined.settled,
-        conditioning=rank.condition(system, chosen.q),
+        conditioning=freedom.conditioning,
         redundant=rank.redundant(system, chosen.q),
         others=tuple(_named(search, q) for q in others),
-        singular=singular,
+        singular=freedom.singular,
     )
 
 
