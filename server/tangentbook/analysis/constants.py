@@ -75,7 +75,7 @@ def _override(plant: Plant, name: str, value: Scalar) -> Node:
             "point.set",
             f"{name} is not a parameter of the plant",
             where=where,
-            hint=nearest(name, plant.parameters),
+            hint=nearest(name, plant.parameters) or "the plant has no parameters",
         )
     node, _ = read_value(
         plant.graph,

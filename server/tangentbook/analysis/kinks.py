@@ -130,7 +130,11 @@ def _compare(
     shown = ", ".join(names)
     if jumps:
         places = tuple(where[k] for k in jumps)
-        return Kinks(kind="jump", active=names, equations=places, why=_jump_text(shown, places))
+        spans = [
+            f"{where[k]}: {_span([arb(side[k]) for side in sides])}" for k in jumps
+        ]
+        why = _jump_text(shown, places, spans)
+        return Kinks(kind="jump", active=names, equations=places, why=why)
     bent = any(
         not arb(side[k]).overlaps(first[k])
         for side in sides
@@ -151,12 +155,18 @@ def _compare(
     )
 
 
-def _jump_text(shown: str, places: Sequence[str]) -> str:
+def _jump_text(shown: str, places: Sequence[str], spans: Sequence[str]) -> str:
     return (
         f"{', '.join(places)} jump{'s' if len(places) == 1 else ''} where {shown} = 0: between "
         "the values on its two sides lies a whole set of rest points (as with dry friction), not "
-        "an isolated point with a linear model"
+        "an isolated point with a linear model; left minus right on the sides, in SI: "
+        f"{'; '.join(spans)}"
     )
+
+
+def _span(values: Sequence[arb]) -> str:
+    middle = [float(v.mid()) for v in values]
+    return f"from {min(middle):.6g} to {max(middle):.6g}"
 
 
 def _decided(graph: Graph, passed: Sequence[Node], signs: dict[Pair, int]) -> list[object]:

@@ -30,7 +30,7 @@ RESIDUAL_LIMIT = 1e-9
 """Largest residual relative to its own size that still counts as solved in double precision (a
 double root is only found to about the square root of the rounding error)."""
 
-REFINED_RESIDUAL_LIMIT = 1e-25
+REFINED_RESIDUAL_LIMIT = 1e-18
 """The same once the refinement has settled: 45 digits leave ample room."""
 
 RANK_TOLERANCE = 1e-9

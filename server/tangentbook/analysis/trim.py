@@ -82,6 +82,13 @@ def find_point(plant: Plant, text: PointText) -> OperatingPoint | NoPoint:
     """
     constants = Constants(plant, text.set)
     conditions = understand_point(plant, text)
+    with np.errstate(all="ignore"):  # far-off starts may overflow; they are judged by the outcome
+        return _found(plant, constants, conditions)
+
+
+def _found(
+    plant: Plant, constants: Constants, conditions: Conditions
+) -> OperatingPoint | NoPoint:
     if "t" in plant.graph.leaves([row.residual for row in conditions.rows]):
         return NoPoint(
             plant=plant,
@@ -217,7 +224,7 @@ def _point(
         residual=refined.residual,
         settled=refined.settled,
         conditioning=freedom.conditioning,
-        redundant=rank.redundant(system, chosen.q),
+        redundant=() if freedom.singular else rank.redundant(system, chosen.q),
         others=tuple(_named(search, q) for q in others),
         singular=freedom.singular,
     )

@@ -67,11 +67,8 @@ CAUTIONS: dict[str, str] = {
     "not-settled": "the digits of the point did not settle",
     "ill-conditioned": "the point is sensitive to small changes",
     "no-units": "no units were declared: magnitudes are taken as given",
-    "units-not-checked": "units were converted but not checked against each other",
     "eigenvalue-right": "an eigenvalue with positive real part",
     "eigenvalue-near-axis": "an eigenvalue that is zero or too close to the axis to tell its side",
     "explicit-time": "the equations contain the time",
     "large-plant": "parts of the report stand beside it",
-    "general": "what always applies",
-    "trade": "what the trade always says",
 }

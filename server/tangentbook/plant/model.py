@@ -150,9 +150,10 @@ class Plant:
 
     def rate_unit(self, base: str, order: int) -> Unit:
         """unit(x) per time^order; the factor is in SI (per clock)."""
-        unit = self.variables[base].unit or ONE
+        declared = self.variables[base].unit
+        unit = declared or ONE
         per = self.clock
-        text = _per_text(unit.text, self.time.text, order)
+        text = "" if declared is None else _per_text(unit.text, self.time.text, order)
         return Unit(
             text=text,
             factor=unit.factor / per.factor**order,

@@ -68,7 +68,7 @@ def run(request: CheckPlant) -> Content:
         sections=blocks,
         derivation=derivation,
         files={},
-        short=_short(plant, summary, answer),
+        short=_short(plant, answer, [c["text"] for c in findings.cautions]),
     )
 
 
@@ -128,11 +128,10 @@ def _sections(plant: Plant, summary: JSON) -> list[Block]:
     ]
 
 
-def _short(plant: Plant, summary: JSON, answer: str) -> str:
+def _short(plant: Plant, answer: str, cautions: list[str]) -> str:
     lines = [answer, f"states: {', '.join(plant.states[:40])}"]
     if plant.inputs:
         lines.append(f"inputs: {', '.join(plant.inputs[:40])}")
     lines.append(f"outputs: {', '.join(o.name for o in plant.outputs[:40])}")
-    if plant.unused:
-        lines.append(f"unused: {', '.join(plant.unused[:40])}")
+    lines += [f"caution: {text}" for text in cautions]
     return "\n".join(lines)

@@ -26,7 +26,7 @@ class Scales:
     def text(self, name: str) -> str | None:
         """Its text, None where none was declared."""
         unit = self.unit(name)
-        return None if unit is None else unit.text
+        return None if unit is None or not unit.text else unit.text
 
     def output_text(self, name: str) -> str | None:
         """The unit text of an output."""
