@@ -133,7 +133,7 @@ def power(a: Ball, b: Ball) -> Ball:
 
 
 def ipow(a: Ball, n: int) -> Ball:
-    """a to the integer n > 0, by squaring."""
+    """A to the integer n > 0, by squaring."""
     result: Ball | None = None
     while n:
         if n & 1:

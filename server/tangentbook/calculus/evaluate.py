@@ -221,7 +221,7 @@ def _real_power(a: float, b: float) -> float:
 
 
 def _scalar_functions() -> dict[str, Callable[..., Any]]:
-    names = "sin cos tan asin acos atan sinh cosh tanh exp log log10 sqrt atan2".split()
+    names = ["sin", "cos", "tan", "asin", "acos", "atan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "atan2"]
     functions: dict[str, Callable[..., Any]] = {name: getattr(math, name) for name in names}
     functions |= {
         "abs": abs,
@@ -245,7 +245,7 @@ def _nan_for_errors(function: Callable[..., Any]) -> Callable[..., Any]:
 
 
 def _batch_functions() -> dict[str, Callable[..., Any]]:
-    same = "sin cos tan sinh cosh tanh exp log log10 sqrt abs sign".split()
+    same = ["sin", "cos", "tan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "abs", "sign"]
     functions: dict[str, Callable[..., Any]] = {name: getattr(np, name) for name in same}
     functions |= {
         "asin": np.arcsin,

@@ -22,9 +22,9 @@ MAX_CONSTANT_BITS = 4096
 MAX_EXPONENT = 400
 
 UNARY = (
-    "neg sin cos tan asin acos atan sinh cosh tanh exp log log10 sqrt abs sign not".split()
+    ["neg", "sin", "cos", "tan", "asin", "acos", "atan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "abs", "sign", "not"]
 )
-BINARY = "add sub mul div pow atan2 min max lt le eq ne and or".split()
+BINARY = ["add", "sub", "mul", "div", "pow", "atan2", "min", "max", "lt", "le", "eq", "ne", "and", "or"]
 
 
 class Graph:
@@ -209,7 +209,7 @@ class Graph:
         return self._node("pow", a, b)
 
     def ipow(self, a: Node, n: int) -> Node:
-        """a to an integer power; see `power` for what is raised."""
+        """A to an integer power; see `power` for what is raised."""
         if abs(n) > MAX_EXPONENT:
             raise OverflowError
         if n == 0:

@@ -111,6 +111,6 @@ _OPERATIONS: dict[str, Callable[..., Any]] = {
     "sign": sympy.sign,
     **{
         name: getattr(sympy, name)
-        for name in "sin cos tan asin acos atan atan2 sinh cosh tanh exp log sqrt".split()
+        for name in ["sin", "cos", "tan", "asin", "acos", "atan", "atan2", "sinh", "cosh", "tanh", "exp", "log", "sqrt"]
     },
 }

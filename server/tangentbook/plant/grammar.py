@@ -31,7 +31,7 @@ sys.setrecursionlimit(max(sys.getrecursionlimit(), 20 * MAX_DEPTH))
 
 FUNCTIONS: dict[str, tuple[int, int]] = {
     **dict.fromkeys(
-        "sin cos tan asin acos atan sinh cosh tanh exp log log10 sqrt abs sign".split(), (1, 1)
+        ["sin", "cos", "tan", "asin", "acos", "atan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "abs", "sign"], (1, 1)
     ),
     "atan2": (2, 2),
     "min": (2, 64),

@@ -7,9 +7,9 @@ solidus unless brackets make it clear):
     product = factor { (" " | "*" | "·") factor }
     factor  = symbol [ "^" integer ] | "(" unit ")" [ "^" integer ] | "1"
 
-What a symbol means comes from the units library; the entries of `_OWN` are those the library
-gives no exact value for (angles: pi is not a decimal) or reads otherwise than the trade does.
-Only the registry is loaded lazily: a plant without units does not pay for it.
+SI symbols are data of `plant.si`; what any other symbol means comes from the units library, which
+is loaded only then. The entries of `_OWN` are those the library gives no exact value for (angles:
+pi is not a decimal) or reads otherwise than the trade does.
 """
 
 from __future__ import annotations
@@ -23,6 +23,7 @@ from typing import TYPE_CHECKING, Any
 from flint import fmpq
 
 from tangentbook.errors import DeclarationError
+from tangentbook.plant.si import si_symbol
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -202,7 +203,7 @@ class _UnitParser:
 
 
 def _times(a: Unit, b: Unit, power: int) -> Unit:
-    """a * b^power; a level (degC) inside a product counts as its difference."""
+    """A * b^power; a level (degC) inside a product counts as its difference."""
     exponents = dict(a.dimension)
     for base, exponent in b.dimension:
         exponents[base] = exponents.get(base, 0) + exponent * power
@@ -227,6 +228,9 @@ def _symbol(symbol: str, text: str) -> Unit:
         return own
     if symbol in _REFUSED:
         raise _bad(text, f"{symbol!r} is not a unit", f"write {_REFUSED[symbol]}")
+    standard = si_symbol(symbol)
+    if standard is not None:
+        return Unit(text=symbol, factor=standard[0], dimension=standard[1])
     if not re.fullmatch(r"[^\W\d_][\w]*|[µμΩ]\w*|Ω", symbol):
         raise _bad(text, f"{symbol!r} is not a unit symbol", 'write as "kg m^2/s"')
     try:
