@@ -15,7 +15,7 @@ TREES = ["server", "reports", "tests"]
 STEPS: tuple[tuple[str, list[str]], ...] = (
     ("format", [PYTHON, "-m", "ruff", "format", "--check", *TREES]),
     ("lint", [PYTHON, "-m", "ruff", "check", *TREES]),
-    ("types", [PYTHON, "-m", "pyright"]),
+    ("types", [PYTHON, "-m", "pyright", "--pythonpath", PYTHON]),
     ("tests", [PYTHON, "-m", "pytest", "-q"]),
 )
 

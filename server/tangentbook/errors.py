@@ -81,7 +81,7 @@ class ReportError(TangentbookError, LookupError):
 
 
 def nearest(name: str, known: Iterable[str]) -> str:
-    """A sentence that offers the closest known name, or lists the known names; "" if there are none."""
+    """A sentence that offers the closest known name, or lists the known; "" if there are none."""
     names = list(known)
     close = get_close_matches(name, names, n=1, cutoff=0.6)
     if not close:

@@ -30,9 +30,11 @@ class PointText:
     name: str = ""
     hold: tuple[tuple[str, Scalar], ...] = ()
     find: tuple[str, ...] = ()
-    guess: Mapping[str, Scalar] = field(default_factory=dict)
-    within: Mapping[str, tuple[Scalar | None, Scalar | None]] = field(default_factory=dict)
-    set: Mapping[str, Scalar] = field(default_factory=dict)
+    guess: Mapping[str, Scalar] = field(default_factory=dict[str, "Scalar"])
+    within: Mapping[str, tuple[Scalar | None, Scalar | None]] = field(
+        default_factory=dict[str, "tuple[Scalar | None, Scalar | None]"]
+    )
+    set: Mapping[str, Scalar] = field(default_factory=dict[str, "Scalar"])
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -49,9 +51,9 @@ class Conditions:
     """A point as understood.
 
     `columns` are all quantities of the point, `fixed` those whose value is given (nodes over the
-    parameters), `free` those to be found. `rows` is the full system over `columns` (fixed ones
-    included, each with its own row); `asked` are the holds as written; `open_rows` are the rows that remain once the fixed values
-    are put in. `assumed` are free quantities on which no row depends.
+    parameters), `free` those to be found, `assumed` free ones on which no row depends. `rows` is
+    the full system over `columns` (fixed ones included, each with its own row), `open_rows` those
+    that remain once the fixed values are put in, `asked` the holds as written.
     """
 
     columns: tuple[str, ...]
@@ -64,7 +66,6 @@ class Conditions:
     guess: Mapping[str, Node]
     bounds: Mapping[str, tuple[Node | None, Node | None]]
     asked: tuple[str, ...] = ()
-
 
 
 def understand_point(plant: Plant, text: PointText) -> Conditions:
@@ -172,9 +173,7 @@ def _held_value(plant: Plant, name: str, value: Scalar, where: str) -> Node:
     known = unit is not None or name in plant.variables or name.rstrip("'") in plant.variables
     if not known and not isinstance(value, str):
         unit = ONE
-    return read_value(
-        plant.graph, value, unit=unit, names=tuple(plant.parameters), where=where
-    )[0]
+    return read_value(plant.graph, value, unit=unit, names=tuple(plant.parameters), where=where)[0]
 
 
 def _value(plant: Plant, name: str, value: Scalar, where: str) -> Node:

@@ -76,7 +76,7 @@ def column_groups(model: LinearModel, columns: Sequence[str]) -> list[list[str]]
         for members, taken in groups:
             if not taken & rows_of[column]:
                 members.append(column)
-                taken |= rows_of[column]
+                taken.update(rows_of[column])
                 break
         else:
             groups.append(([column], set(rows_of[column])))
@@ -93,7 +93,9 @@ def by_differences(at: Surroundings, model: LinearModel) -> Confirmation:
         except NoBranchError:
             return Confirmation(value=None, why=f"no values beside the point along {group[0]}")
         if not _solves(at.rates, ahead) or not _solves(at.rates, back):
-            return Confirmation(value=None, why="the original equations are not met beside the point")
+            return Confirmation(
+                value=None, why="the original equations are not met beside the point"
+            )
         offset = len(at.base)
         for k, name in enumerate(at.rates.plant.unknowns):
             worst.add(name, group, (ahead[offset + k] - back[offset + k]) / 2)

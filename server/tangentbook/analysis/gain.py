@@ -40,13 +40,20 @@ def dc_gain(model: LinearModel) -> Gain:
     try:
         settled = a.solve(b)
     except ZeroDivisionError:
-        return Gain(matrix=None, why="A could not be shown to be invertible: it has an eigenvalue 0 "
-                    "or one too close to it")
+        return Gain(
+            matrix=None,
+            why="A could not be shown to be invertible: it has an eigenvalue 0 "
+            "or one too close to it",
+        )
     conditioning = _condition(a)
     if conditioning > 1 / RANK_TOLERANCE**1.5:
         return Gain(matrix=None, why="A is singular to the digits known", conditioning=conditioning)
-    c = arb_mat(len(outputs), len(states), [model.output_entry(y, s) for y in outputs for s in states])
-    d = arb_mat(len(outputs), len(inputs), [model.output_entry(y, u) for y in outputs for u in inputs])
+    c = arb_mat(
+        len(outputs), len(states), [model.output_entry(y, s) for y in outputs for s in states]
+    )
+    d = arb_mat(
+        len(outputs), len(inputs), [model.output_entry(y, u) for y in outputs for u in inputs]
+    )
     return Gain(matrix=d - c * settled, conditioning=conditioning)
 
 

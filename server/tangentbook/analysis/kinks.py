@@ -105,9 +105,7 @@ def _compare(
 ) -> Kinks:
     graph = partials.plant.graph
     passed = [
-        node
-        for node in switches
-        if graph.op[node] in _SWITCHED and _pair(graph, node)[0] in active
+        node for node in switches if graph.op[node] in _SWITCHED and _pair(graph, node)[0] in active
     ]
     outputs = [*roots, *partials.nodes]
     function = Function(graph, partials.names, outputs, switches=passed)
@@ -130,15 +128,11 @@ def _compare(
     shown = ", ".join(names)
     if jumps:
         places = tuple(where[k] for k in jumps)
-        spans = [
-            f"{where[k]}: {_span([arb(side[k]) for side in sides])}" for k in jumps
-        ]
+        spans = [f"{where[k]}: {_span([arb(side[k]) for side in sides])}" for k in jumps]
         why = _jump_text(shown, places, spans)
         return Kinks(kind="jump", active=names, equations=places, why=why)
     bent = any(
-        not arb(side[k]).overlaps(first[k])
-        for side in sides
-        for k in range(count, len(outputs))
+        not arb(side[k]).overlaps(first[k]) for side in sides for k in range(count, len(outputs))
     )
     if bent:
         return Kinks(

@@ -54,9 +54,7 @@ class LinearModel:
         """A as a matrix of balls."""
         n = len(self.states)
         zero = arb(0)
-        return arb_mat(
-            n, n, [self.rates[r].get(c, zero) for r in self.states for c in self.states]
-        )
+        return arb_mat(n, n, [self.rates[r].get(c, zero) for r in self.states for c in self.states])
 
     def rate_entry(self, state: str, column: str) -> arb:
         """An entry of A or B, in the row of a state."""
@@ -145,9 +143,7 @@ def _solve_block(
     known = [_through(row, at, solved, columns) for row in rows]
     size = len(rows)
     zero = arb(0)
-    matrix = [
-        [at[row[name]] if name in row else zero for name in block.unknowns] for row in rows
-    ]
+    matrix = [[at[row[name]] if name in row else zero for name in block.unknowns] for row in rows]
     if size == 1:
         pivot = matrix[0][0]
         if pivot.contains(0) or not pivot.is_finite():

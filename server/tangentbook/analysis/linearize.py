@@ -144,9 +144,7 @@ def _outputs(plant: Plant, partials: Partials, values: list[arb]) -> dict[str, a
     return {o.name: value for o, value in zip(plant.outputs, found, strict=True)}
 
 
-def _symbolic(
-    partials: Partials, values: list[arb], at: Mapping[int, arb]
-) -> Confirmation | None:
+def _symbolic(partials: Partials, values: list[arb], at: Mapping[int, arb]) -> Confirmation | None:
     plant = partials.plant
     roots = [*(e.residual for e in plant.equations), *(o.node for o in plant.outputs)]
     if len(plant.graph.reachable(roots)) > SYMBOLIC_NODES:
@@ -154,5 +152,7 @@ def _symbolic(
     from tangentbook.calculus.symbolic import differ  # loads the symbolic library
 
     rows = [*partials.equations, *partials.outputs]
-    value, entry = differ(plant.graph, roots, rows, dict(zip(partials.names, values, strict=True)), at)
+    value, entry = differ(
+        plant.graph, roots, rows, dict(zip(partials.names, values, strict=True)), at
+    )
     return Confirmation(value=value, entry=entry)

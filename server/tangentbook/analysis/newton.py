@@ -46,7 +46,6 @@ class Attempt:
     q: Vector
     solved: bool
     residual: float
-    steps: int
     converged: bool
 
 
@@ -68,8 +67,7 @@ def solve(
     except DomainError:
         return None
     converged = False
-    step = 0
-    for step in range(1, NEWTON_STEPS + 1):
+    for _ in range(NEWTON_STEPS):
         scale = np.maximum(typical, np.abs(q))
         back = _least_squares(system, entries, scale)
         d = back(-residual)
@@ -82,7 +80,7 @@ def solve(
         if moved is None:
             break
         q, residual, entries = moved
-    return _judged(system, q, typical, step, converged=converged)
+    return _judged(system, q, typical, converged=converged)
 
 
 def _landed(system: System, q: Vector, last: Vector) -> Vector:
@@ -138,19 +136,15 @@ def descend(
     )
     q = np.clip(found.x * typical, low, high)
     try:
-        return _judged(system, q, typical, int(found.nfev), converged=found.status > 0)
+        return _judged(system, q, typical, converged=found.status > 0)
     except DomainError:
         return None
 
 
-def _judged(
-    system: System, q: Vector, typical: Vector, steps: int, *, converged: bool
-) -> Attempt:
+def _judged(system: System, q: Vector, typical: Vector, *, converged: bool) -> Attempt:
     sizes = system.sizes(q, typical)
     residual = float(np.max(np.abs(system.residual(q)) / sizes, initial=0.0))
-    return Attempt(
-        q=q, solved=residual <= RESIDUAL_LIMIT, residual=residual, steps=steps, converged=converged
-    )
+    return Attempt(q=q, solved=residual <= RESIDUAL_LIMIT, residual=residual, converged=converged)
 
 
 def _damped(

@@ -51,8 +51,11 @@ def _singular(system: System, q: Vector) -> tuple[Matrix, Vector, Matrix, Vector
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Freedom:
-    """What the rows leave open at a point: the loose quantities, whether J is singular there, and
-    the condition number of the equilibrated J."""
+    """What the rows leave open at a point.
+
+    `loose`: the quantities left open; `singular`: whether J is singular there; `conditioning`: the
+    condition number of the equilibrated J.
+    """
 
     loose: tuple[str, ...]
     singular: bool
@@ -119,7 +122,9 @@ def _lands_at(system: System, trial: Vector, pinned: int, typical: Vector) -> bo
         matrix[:, pinned] = 0.0
         weight = np.max(np.abs(matrix), axis=1, initial=0.0)
         weight = 1.0 / np.where(weight > 0, weight, 1.0)
-        step = np.linalg.lstsq(matrix * weight[:, None], -residual * weight, rcond=RANK_TOLERANCE)[0]
+        step = np.linalg.lstsq(matrix * weight[:, None], -residual * weight, rcond=RANK_TOLERANCE)[
+            0
+        ]
         q = q + scale * step
     return False
 

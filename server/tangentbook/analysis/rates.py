@@ -153,7 +153,7 @@ class Rates:
     def series(
         self, base: Sequence[Any], center: Mapping[str, arb], reach: Mapping[str, arb]
     ) -> list[Any]:
-        """w along a straight segment as power series of length 3 over balls.
+        """W along a straight segment as power series of length 3 over balls.
 
         Args:
             base: parameters, states, inputs; a ball, or a series whose head covers the segment.

@@ -71,14 +71,14 @@ def refine(system: System, q: Vector, typical: Vector) -> Refined:
         change = [abs(d).upper() for d in step]
         best = [arb(c) for c in change]
         settled = all(
-            c <= abs(v) * _GOAL or c <= f
-            for c, v, f in zip(best, values, floors, strict=True)
+            c <= abs(v) * _GOAL or c <= f for c, v, f in zip(best, values, floors, strict=True)
         )
     if not settled and len(q) <= SLOW_REFINE_UP_TO:
         values, best, settled = _crawl(system, values, floors)
         # half the bits of the arithmetic is all that a multiple root gives
         best = [
-            c.max((abs(v) + f / _GOAL) * _HALF) for c, v, f in zip(best, values, floors, strict=True)
+            c.max((abs(v) + f / _GOAL) * _HALF)
+            for c, v, f in zip(best, values, floors, strict=True)
         ]
     balls = [_ball(v, c, f) for v, c, f in zip(values, best, floors, strict=True)]
     return Refined(values=balls, residual=_relative(system, values, q, typical), settled=settled)
@@ -87,7 +87,7 @@ def refine(system: System, q: Vector, typical: Vector) -> Refined:
 def _crawl(
     system: System, values: list[arb], floors: Sequence[arb]
 ) -> tuple[list[arb], list[arb], bool]:
-    """Newton with a fresh Jacobian in every pass: at a multiple root each pass still gains a bit."""
+    """Newton with a fresh Jacobian in every pass: a multiple root still gains a bit a pass."""
     rows, columns = system.shape
     change = [abs(v) + f for v, f in zip(values, floors, strict=True)]
     if rows != columns:

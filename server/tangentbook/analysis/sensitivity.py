@@ -62,9 +62,7 @@ def _moving_rows(point: OperatingPoint) -> list[Node]:
     held = {graph.var(n): node for n, node in conditions.fixed.items()}
     rows = graph.substitute(rows, held)
     derived = {
-        graph.var(n): constants.raw[n]
-        for n in constants.names
-        if graph.leaves([constants.raw[n]])
+        graph.var(n): constants.raw[n] for n in constants.names if graph.leaves([constants.raw[n]])
     }
     for _ in range(len(derived)):
         replaced = graph.substitute(rows, derived)

@@ -61,7 +61,9 @@ def spectrum(model: LinearModel) -> Spectrum:
         if len(block) == 1:
             found.append(_single(model.rate_entry(block[0], block[0])))
             continue
-        matrix = arb_mat(len(block), len(block), [model.rate_entry(r, c) for r in block for c in block])
+        matrix = arb_mat(
+            len(block), len(block), [model.rate_entry(r, c) for r in block for c in block]
+        )
         small = len(block) <= HIGH_PRECISION_BLOCK
         values, difference = _precise(matrix) if small else _double(matrix)
         routes.add("characteristic polynomial" if small else "double precision twice")
@@ -90,12 +92,7 @@ def _single(entry: arb) -> Eigenvalue:
 def _blocks(model: LinearModel) -> list[list[str]]:
     states = model.states
     position = {name: k for k, name in enumerate(states)}
-    pairs = [
-        (position[r], position[c])
-        for r in states
-        for c in model.rates[r]
-        if c in position
-    ]
+    pairs = [(position[r], position[c]) for r in states for c in model.rates[r] if c in position]
     rows, columns = [i for i, _ in pairs], [j for _, j in pairs]
     pattern = csr_array((np.ones(len(pairs)), (rows, columns)), shape=(len(states), len(states)))
     count, labels = connected_components(pattern, directed=True, connection="strong")
@@ -171,9 +168,7 @@ def _polynomial_difference(matrix: arb_mat, values: Sequence[acb]) -> float:
     return worst
 
 
-def _radii(
-    values: Sequence[acb], difference: float, uncertainty: float, size: int
-) -> list[float]:
+def _radii(values: Sequence[acb], difference: float, uncertainty: float, size: int) -> list[float]:
     """Estimated error of each eigenvalue: first order where it is separate, a root otherwise.
 
     The error of a root of a polynomial whose coefficients are off by eps (relative) is about

@@ -68,7 +68,7 @@ class System:
         for at, node in self._fixed_at:
             self._template[at] = float(constants.value(node).mid())
 
-    def point(self, q: Sequence[float]) -> list[float]:
+    def point(self, q: Sequence[float] | Vector) -> list[float]:
         """All values in the order of `names`, in double precision."""
         values = list(self._template)
         for at, value in zip(self._free_at, q, strict=True):
@@ -118,7 +118,7 @@ class System:
         return np.maximum(np.array(sizes), 1e-300)
 
     def ball_residual(self, q: Sequence[arb]) -> list[arb]:
-        """r over balls."""
+        """R over balls."""
         return self._residual.balls(self.ball_point(q))
 
     def ball_jacobian(self, q: Sequence[arb]) -> list[arb]:

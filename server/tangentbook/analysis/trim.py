@@ -70,7 +70,7 @@ class NoPoint:
     why: str
     blocking: tuple[str, ...] = ()
     undetermined: tuple[str, ...] = ()
-    closest: dict[str, float] = field(default_factory=dict)
+    closest: dict[str, float] = field(default_factory=dict[str, float])
     residual: float | None = None
 
 
@@ -86,9 +86,7 @@ def find_point(plant: Plant, text: PointText) -> OperatingPoint | NoPoint:
         return _found(plant, constants, conditions)
 
 
-def _found(
-    plant: Plant, constants: Constants, conditions: Conditions
-) -> OperatingPoint | NoPoint:
+def _found(plant: Plant, constants: Constants, conditions: Conditions) -> OperatingPoint | NoPoint:
     if "t" in plant.graph.leaves([row.residual for row in conditions.rows]):
         return NoPoint(
             plant=plant,
@@ -164,9 +162,7 @@ class _Search:
             return solved[0]
         return min(
             solved,
-            key=lambda a: float(
-                np.linalg.norm(((a.q - self.guess) / self.typical)[guessed])
-            ),
+            key=lambda a: float(np.linalg.norm(((a.q - self.guess) / self.typical)[guessed])),
         )
 
     def same(self, a: Vector, b: Vector) -> bool:
@@ -180,9 +176,7 @@ class _Search:
         return bool(np.all(difference <= 1e-5 * scale))
 
 
-def _point(
-    search: _Search, chosen: Attempt, solved: Sequence[Attempt]
-) -> OperatingPoint | NoPoint:
+def _point(search: _Search, chosen: Attempt, solved: Sequence[Attempt]) -> OperatingPoint | NoPoint:
     system = search.system
     conditions = system.conditions
     bounds = (search.low, search.high)
@@ -283,9 +277,9 @@ def _no_point(search: _Search, attempts: Sequence[Attempt]) -> NoPoint:
     else:
         limits = f"; at its bound: {', '.join(bounded)}" if bounded else ""
         why = (
-            f"no start reached a point that meets all conditions (that none exists is not shown); "
-            f"at the closest approach these block each other: {shown}{limits}; try a guess, typical "
-            "sizes or other values"
+            "no start reached a point that meets all conditions (that none exists is not shown); "
+            f"at the closest approach these block each other: {shown}{limits}; try a guess, "
+            "typical sizes or other values"
         )
     return NoPoint(
         plant=system.plant,

@@ -8,6 +8,7 @@ is True, False or None (cannot be told); a choice that cannot be told is the uni
 
 from __future__ import annotations
 
+from operator import methodcaller
 from typing import TYPE_CHECKING, TypeAlias
 
 from flint import arb, arb_series
@@ -19,6 +20,8 @@ Ball: TypeAlias = "arb | arb_series"
 Truth: TypeAlias = "bool | None"
 
 NAN = arb("nan")
+WIDE_BITS = 20
+"""Below this relative accuracy a product of a ball with itself loses visibly to its ends."""
 
 
 def _head(a: Ball) -> arb:
@@ -37,6 +40,15 @@ def _by_ends(a: arb, function: Callable[[arb], arb]) -> arb:
     return low.union(high)
 
 
+def _even(a: arb, function: Callable[[arb], arb]) -> arb:
+    """An even function that grows with |a|: by the ends of |a|, so that it never dips below."""
+    if a.is_exact():
+        return function(a)
+    if a.contains(0):
+        return function(arb(0)).union(function(arb(a.abs_upper())))
+    return _by_ends(abs(a), function)
+
+
 def _tanh(a: Ball) -> Ball:
     if isinstance(a, arb):
         return _by_ends(a, lambda x: x.tanh())
@@ -51,7 +63,9 @@ def _sinh(a: Ball) -> Ball:
 
 
 def _cosh(a: Ball) -> Ball:
-    return a.cosh() if isinstance(a, arb) else (a.exp() + (-a).exp()) / 2
+    if isinstance(a, arb):
+        return _even(a, lambda x: x.cosh())
+    return (a.exp() + (-a).exp()) / 2
 
 
 def _log10(a: Ball) -> Ball:
@@ -95,7 +109,7 @@ def _sign(a: Ball) -> Ball:
 
 def _abs(a: Ball) -> Ball:
     if isinstance(a, arb):
-        return abs(a)
+        return _even(a, abs)
     sign = _sign_of(_head(a))
     return _nan_like(a) if not sign else a * sign
 
@@ -133,7 +147,9 @@ def power(a: Ball, b: Ball) -> Ball:
 
 
 def ipow(a: Ball, n: int) -> Ball:
-    """A to the integer n > 0, by squaring."""
+    """a^n for an integer n > 0: by squaring, for wide balls by the ends."""
+    if isinstance(a, arb) and a.rel_accuracy_bits() < WIDE_BITS:
+        return (_by_ends if n & 1 else _even)(a, lambda x: x**n)
     result: Ball | None = None
     while n:
         if n & 1:
@@ -167,6 +183,11 @@ def equal(a: Ball, b: Ball) -> Truth:
     return None if x.overlaps(y) else False
 
 
+def unequal(a: Ball, b: Ball) -> Truth:
+    """Whether a != b: True, False or None."""
+    return negation(equal(a, b))
+
+
 def negation(a: Truth) -> Truth:
     """Three-valued not."""
     return None if a is None else not a
@@ -194,17 +215,12 @@ def choose(condition: Truth, a: Ball, b: Ball) -> Ball:
 
 
 FUNCTIONS: dict[str, Callable[..., object]] = {
-    "sin": lambda a: a.sin(),
-    "cos": lambda a: a.cos(),
-    "tan": lambda a: a.tan(),
+    **{name: methodcaller(name) for name in ("sin", "cos", "tan", "atan", "exp", "log")},
     "asin": _asin,
     "acos": _acos,
-    "atan": lambda a: a.atan(),
     "sinh": _sinh,
     "cosh": _cosh,
     "tanh": _tanh,
-    "exp": lambda a: a.exp(),
-    "log": lambda a: a.log(),
     "log10": _log10,
     "sqrt": _sqrt,
     "abs": _abs,
@@ -217,7 +233,7 @@ FUNCTIONS: dict[str, Callable[..., object]] = {
     "lt": less,
     "le": less_equal,
     "eq": equal,
-    "ne": lambda a, b: negation(equal(a, b)),
+    "ne": unequal,
     "and": both,
     "or": either,
     "not": negation,

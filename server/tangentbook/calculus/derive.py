@@ -45,9 +45,7 @@ def rate(graph: Graph, node: Node, rate_of: Callable[[str], Node]) -> Node:
     return total
 
 
-def _gradient(
-    graph: Graph, node: Node, found: dict[Node, Gradient], wanted: set[str]
-) -> Gradient:
+def _gradient(graph: Graph, node: Node, found: dict[Node, Gradient], wanted: set[str]) -> Gradient:
     op = graph.op[node]
     if op == "var":
         name = str(graph.args[node][0])
@@ -55,16 +53,19 @@ def _gradient(
     children = graph.children(node)
     if op in _TRUTHS or not any(found[child] for child in children):
         return {}
-    if op in ("add", "sub"):
-        return _sum(graph, op, found[children[0]], found[children[1]])
-    if op == "neg":
-        return {name: graph.neg(d) for name, d in found[children[0]].items()}
     if op in ("if", "min", "max"):
         return _selected(graph, node, found)
     if len(children) == 1:
-        slope = _slope(graph, node)
-        return _scaled(graph, slope, found[children[0]])
+        return _one_place(graph, node, found[children[0]])
+    if op in ("add", "sub"):
+        return _sum(graph, op, found[children[0]], found[children[1]])
     return _two_place(graph, node, found)
+
+
+def _one_place(graph: Graph, node: Node, inner: Gradient) -> Gradient:
+    if graph.op[node] == "neg":
+        return {name: graph.neg(d) for name, d in inner.items()}
+    return _scaled(graph, _slope(graph, node), inner)
 
 
 def _sum(graph: Graph, op: str, left: Gradient, right: Gradient) -> Gradient:
@@ -118,20 +119,21 @@ def _two_place(graph: Graph, node: Node, found: dict[Node, Gradient]) -> Gradien
 Partials = tuple[int, int]
 
 
-def _product(g: Graph, _node: Node, a: Node, b: Node, _moves: bool) -> Partials:  # noqa: FBT001 - one signature for all rules
+# one signature for all rules: graph, node, its two arguments, whether the second one varies
+def _product(_g: Graph, _node: Node, a: Node, b: Node, _moves: bool) -> Partials:  # noqa: FBT001 - as said above
     return b, a
 
 
-def _quotient(g: Graph, node: Node, _a: Node, b: Node, moves: bool) -> Partials:  # noqa: FBT001
+def _quotient(g: Graph, node: Node, _a: Node, b: Node, moves: bool) -> Partials:  # noqa: FBT001 - as said above
     return g.div(g.const(1), b), g.neg(g.div(node, b)) if moves else g.const(0)
 
 
-def _general_power(g: Graph, node: Node, a: Node, b: Node, moves: bool) -> Partials:  # noqa: FBT001
+def _general_power(g: Graph, node: Node, a: Node, b: Node, moves: bool) -> Partials:  # noqa: FBT001 - as said above
     left = g.mul(b, g.power(a, g.sub(b, g.const(1))))
     return left, g.mul(node, g.unary("log", a)) if moves else g.const(0)
 
 
-def _angle(g: Graph, _node: Node, y: Node, x: Node, _moves: bool) -> Partials:  # noqa: FBT001
+def _angle(g: Graph, _node: Node, y: Node, x: Node, _moves: bool) -> Partials:  # noqa: FBT001 - as said above
     square = g.add(g.ipow(x, 2), g.ipow(y, 2))
     return g.div(x, square), g.neg(g.div(y, square))
 
@@ -149,7 +151,7 @@ def _slope(graph: Graph, node: Node) -> Node:
     op = graph.op[node]
     (a,) = graph.children(node)
     if op == "ipow":
-        n = int(str(graph.args[node][1]))
+        n = graph.exponent(node)
         return graph.mul(graph.const(n), graph.ipow(a, n - 1))
     return _LOCAL[op](graph, node, a)
 
@@ -163,18 +165,14 @@ _LOCAL: dict[str, Callable[[Graph, int, int], int]] = {
     "cos": lambda g, _n, a: g.neg(g.unary("sin", a)),
     "tan": lambda g, n, _a: g.add(g.const(1), g.ipow(n, 2)),
     "asin": lambda g, _n, a: g.div(g.const(1), g.unary("sqrt", _one_minus_square(g, a))),
-    "acos": lambda g, _n, a: g.neg(
-        g.div(g.const(1), g.unary("sqrt", _one_minus_square(g, a)))
-    ),
+    "acos": lambda g, _n, a: g.neg(g.div(g.const(1), g.unary("sqrt", _one_minus_square(g, a)))),
     "atan": lambda g, _n, a: g.div(g.const(1), g.add(g.const(1), g.ipow(a, 2))),
     "sinh": lambda g, _n, a: g.unary("cosh", a),
     "cosh": lambda g, _n, a: g.unary("sinh", a),
     "tanh": lambda g, n, _a: _one_minus_square(g, n),
     "exp": lambda _g, n, _a: n,
     "log": lambda g, _n, a: g.div(g.const(1), a),
-    "log10": lambda g, _n, a: g.div(
-        g.const(1), g.mul(a, g.unary("log", g.const(10)))
-    ),
+    "log10": lambda g, _n, a: g.div(g.const(1), g.mul(a, g.unary("log", g.const(10)))),
     "sqrt": lambda g, n, _a: g.div(g.const(fmpq(1, 2)), n),
     "abs": lambda g, _n, a: g.unary("sign", a),
     "sign": lambda g, _n, _a: g.const(0),

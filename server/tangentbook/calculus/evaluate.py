@@ -9,22 +9,23 @@ own making; no user text ever reaches the compiler.
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING, Any
+from collections.abc import Callable
+from typing import TYPE_CHECKING, Any, TypeAlias
 
 import numpy as np
+import numpy.typing as npt
 from flint import arb, ctx
 
 from tangentbook.calculus import balls
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Mapping, Sequence
+    from collections.abc import Mapping, Sequence
 
-    import numpy.typing as npt
     from flint import fmpq
 
     from tangentbook.calculus.graph import Graph, Node
 
-FloatArray = "npt.NDArray[np.float64]"
+FloatArray: TypeAlias = npt.NDArray[np.float64]
 
 _INFIX = {"add": "+", "sub": "-", "mul": "*", "div": "/"}
 _COMPARE = {"lt": "<", "le": "<=", "eq": "==", "ne": "!="}
@@ -75,10 +76,12 @@ class Function:
             raise DomainError
         return values
 
-    def batch(self, x: npt.NDArray[np.float64]) -> list[npt.NDArray[np.float64]]:
-        """Values at many points: `x` is (names, points); NaN where there is no value."""
+    def batch(self, x: FloatArray) -> list[FloatArray]:
+        """Values at many points: `x` is (names, points); not finite where there is no value."""
         with np.errstate(all="ignore"):
-            return self._function("batch", _BATCH)(x)
+            values = self._function("batch", _BATCH)(x)
+        # an output without a variable is one number for all points
+        return [np.broadcast_to(np.asarray(v, dtype=np.float64), x.shape[1:]) for v in values]
 
     def balls(self, x: Sequence[Any]) -> list[arb]:
         """Enclosures over balls at the current precision; not finite where there is no value."""
@@ -149,7 +152,7 @@ class Function:
             return dialect.pi
         args = [f"v{child}" for child in self.graph.children(node)]
         if op == "ipow":
-            return dialect.integer_power(args[0], int(str(self.graph.args[node][1])))
+            return dialect.integer_power(args[0], self.graph.exponent(node))
         return dialect.operation(op, args)
 
 
@@ -213,6 +216,14 @@ class _BallDialect(_Dialect):
     def constant(self, value: fmpq, index: int) -> str:  # noqa: ARG002 - the value is in the list
         return f"c[{index}]"
 
+    def integer_power(self, a: str, n: int) -> str:
+        return f"1/f_ipow({a},{-n})" if n < 0 else f"f_ipow({a},{n})"
+
+
+_CIRCULAR = ("sin", "cos", "tan")
+_INVERSE = ("asin", "acos", "atan", "atan2")
+_OTHERS = ("sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt")
+
 
 def _real_power(a: float, b: float) -> float:
     if a < 0:
@@ -220,56 +231,88 @@ def _real_power(a: float, b: float) -> float:
     return math.pow(a, b)
 
 
-def _scalar_functions() -> dict[str, Callable[..., Any]]:
-    names = ["sin", "cos", "tan", "asin", "acos", "atan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "atan2"]
-    functions: dict[str, Callable[..., Any]] = {name: getattr(math, name) for name in names}
-    functions |= {
-        "abs": abs,
-        "sign": lambda a: float((a > 0) - (a < 0)),
-        "min": min,
-        "max": max,
-        "pow": _real_power,
-        "ipow": lambda a, n: a**n,
-    }
-    return functions
+def _quotient(a: float, b: float) -> float:
+    return a / b
 
 
-def _nan_for_errors(function: Callable[..., Any]) -> Callable[..., Any]:
-    def safe(*args: Any) -> Any:  # noqa: ANN401 - numbers in, number out
+def _integer_power(a: float, n: int) -> float:
+    return a**n
+
+
+# of a number and NaN there is no least, no greatest and no sign: NaN comes out
+def _least(a: float, b: float) -> float:
+    return a if a <= b else b if b < a else math.nan
+
+
+def _greatest(a: float, b: float) -> float:
+    return a if a >= b else b if b > a else math.nan
+
+
+def _sign(a: float) -> float:
+    return 1.0 if a > 0 else -1.0 if a < 0 else 0.0 if a == 0 else math.nan
+
+
+_SCALAR_FUNCTIONS: dict[str, Callable[..., float]] = {
+    **{name: getattr(math, name) for name in (*_CIRCULAR, *_INVERSE, *_OTHERS)},
+    "abs": math.fabs,
+    "sign": _sign,
+    "min": _least,
+    "max": _greatest,
+    "pow": _real_power,
+    "ipow": _integer_power,
+}
+
+
+def _overflown(a: float, n: int = 0) -> float:
+    """What an overflowing exp, sinh, cosh, pow or integer power tends to."""
+    return -math.inf if a < 0 and n % 2 else math.inf
+
+
+def _safe(name: str, function: Callable[..., float]) -> Callable[..., float]:
+    """NaN or the infinite value where the function would raise: another branch may be in force."""
+
+    def safe(*args: float) -> float:
         try:
             return function(*args)
-        except (ValueError, ZeroDivisionError, OverflowError):
+        except (ValueError, ZeroDivisionError):
             return math.nan
+        except OverflowError:
+            odd = {"sinh": 1, "ipow": int(args[-1])}.get(name, 0)
+            return _overflown(args[0], odd)
 
     return safe
 
 
-def _batch_functions() -> dict[str, Callable[..., Any]]:
-    same = ["sin", "cos", "tan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "abs", "sign"]
-    functions: dict[str, Callable[..., Any]] = {name: getattr(np, name) for name in same}
-    functions |= {
-        "asin": np.arcsin,
-        "acos": np.arccos,
-        "atan": np.arctan,
-        "atan2": np.arctan2,
-        "min": np.minimum,
-        "max": np.maximum,
-        "pow": lambda a, b: np.where(np.asarray(a) < 0, np.nan, np.power(np.abs(a), b)),
-        "ipow": lambda a, n: np.asarray(a) ** n,
-        "and": np.logical_and,
-        "or": np.logical_or,
-        "not": np.logical_not,
-        "if": np.where,
-    }
-    return functions
+def _batch_power(a: FloatArray, b: FloatArray) -> FloatArray:
+    return np.where(np.asarray(a) < 0, np.nan, np.power(np.abs(a), b))
 
 
-_FLOAT = _ScalarDialect(_scalar_functions())
+def _batch_integer_power(a: FloatArray, n: int) -> FloatArray:
+    return np.asarray(a) ** n
+
+
+_BATCH_FUNCTIONS: dict[str, Callable[..., Any]] = {
+    **{name: getattr(np, name) for name in (*_CIRCULAR, *_OTHERS, "abs", "sign")},
+    "asin": np.arcsin,
+    "acos": np.arccos,
+    "atan": np.arctan,
+    "atan2": np.arctan2,
+    "min": np.minimum,
+    "max": np.maximum,
+    "pow": _batch_power,
+    "ipow": _batch_integer_power,
+    "and": np.logical_and,
+    "or": np.logical_or,
+    "not": np.logical_not,
+    "if": np.where,
+}
+
+_FLOAT = _ScalarDialect(_SCALAR_FUNCTIONS)
 _SAFE = _SafeDialect(
     {
-        name: _nan_for_errors(function)
-        for name, function in {**_scalar_functions(), "div": lambda a, b: a / b}.items()
+        name: _safe(name, function)
+        for name, function in {**_SCALAR_FUNCTIONS, "div": _quotient}.items()
     }
 )
-_BATCH = _BatchDialect(_batch_functions())
+_BATCH = _BatchDialect(_BATCH_FUNCTIONS)
 _BALL = _BallDialect(balls.FUNCTIONS)

@@ -7,7 +7,7 @@ Only exact rationals are folded, and only up to a size: everything else stays as
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from flint import fmpq
 
@@ -21,10 +21,41 @@ Node = int
 MAX_CONSTANT_BITS = 4096
 MAX_EXPONENT = 400
 
-UNARY = (
-    ["neg", "sin", "cos", "tan", "asin", "acos", "atan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "abs", "sign", "not"]
-)
-BINARY = ["add", "sub", "mul", "div", "pow", "atan2", "min", "max", "lt", "le", "eq", "ne", "and", "or"]
+UNARY = [
+    "neg",
+    "sin",
+    "cos",
+    "tan",
+    "asin",
+    "acos",
+    "atan",
+    "sinh",
+    "cosh",
+    "tanh",
+    "exp",
+    "log",
+    "log10",
+    "sqrt",
+    "abs",
+    "sign",
+    "not",
+]
+BINARY = [
+    "add",
+    "sub",
+    "mul",
+    "div",
+    "pow",
+    "atan2",
+    "min",
+    "max",
+    "lt",
+    "le",
+    "eq",
+    "ne",
+    "and",
+    "or",
+]
 
 
 class Graph:
@@ -38,18 +69,17 @@ class Graph:
 
     def __init__(self) -> None:
         self.op: list[str] = []
-        self.args: list[tuple[object, ...]] = []
+        # nodes, except in leaves (a value, a name) and for the exponent of an integer power
+        self.args: list[tuple[Any, ...]] = []
         self._known: dict[tuple[object, ...], Node] = {}
 
     def __len__(self) -> int:
         return len(self.op)
 
     def _node(self, op: str, *args: object) -> Node:
-        key: tuple[object, ...] = (op, *args)
-        if op == "const":
-            value = args[0]
-            assert isinstance(value, fmpq)  # noqa: S101 - internal invariant
-            key = (op, value.p.__int__(), value.q.__int__())
+        return self._kept((op, *args), op, args)
+
+    def _kept(self, key: tuple[object, ...], op: str, args: tuple[object, ...]) -> Node:
         found = self._known.get(key)
         if found is None:
             found = len(self.op)
@@ -62,7 +92,8 @@ class Graph:
 
     def const(self, value: fmpq | int) -> Node:
         """An exact rational constant."""
-        return self._node("const", fmpq(value))
+        exact = fmpq(value)
+        return self._kept(("const", int(exact.p), int(exact.q)), "const", (exact,))
 
     def pi(self) -> Node:
         """The circle number, exact as a symbol."""
@@ -74,11 +105,7 @@ class Graph:
 
     def value_of(self, node: Node) -> fmpq | None:
         """The rational value of a constant node, else None."""
-        if self.op[node] == "const":
-            value = self.args[node][0]
-            assert isinstance(value, fmpq)  # noqa: S101 - internal invariant
-            return value
-        return None
+        return self.args[node][0] if self.op[node] == "const" else None
 
     def name_of(self, node: Node) -> str | None:
         """The name of a variable node, else None."""
@@ -89,8 +116,11 @@ class Graph:
         op = self.op[node]
         if op in ("const", "pi", "var"):
             return ()
-        args = self.args[node]
-        return (args[0],) if op == "ipow" else args  # type: ignore[return-value]  # nodes by construction
+        return self.args[node][:1] if op == "ipow" else self.args[node]
+
+    def exponent(self, node: Node) -> int:
+        """The exponent of an integer power."""
+        return self.args[node][1]
 
     def is_zero(self, node: Node) -> bool:
         """Whether the node is the constant 0."""
@@ -152,10 +182,8 @@ class Graph:
 
     def mul(self, a: Node, b: Node) -> Node:
         """The product; 0*x stays as written, since x may have no value."""
-        if self.is_one(a):
-            return b
-        if self.is_one(b):
-            return a
+        if self.is_one(a) or self.is_one(b):
+            return b if self.is_one(a) else a
         folded = self._folded("mul", a, b)
         if folded is not None:
             return folded
@@ -163,10 +191,9 @@ class Graph:
             return self.neg(self.mul(self.children(a)[0], b))
         if self.op[b] == "neg":
             return self.neg(self.mul(a, self.children(b)[0]))
-        if self.value_of(a) == -1:
-            return self.neg(b)
-        if self.value_of(b) == -1:
-            return self.neg(a)
+        for factor, other in ((a, b), (b, a)):
+            if self.value_of(factor) == -1:
+                return self.neg(other)
         return self._node("mul", a, b)
 
     def times(self, a: Node, b: Node) -> Node:
@@ -182,8 +209,6 @@ class Graph:
         if self.is_zero(b):
             raise ZeroDivisionError
         if self.is_one(b):
-            return a
-        if self.is_zero(a) and self.value_of(b) is not None:
             return a
         folded = self._folded("div", a, b)
         if folded is not None:
@@ -209,11 +234,15 @@ class Graph:
         return self._node("pow", a, b)
 
     def ipow(self, a: Node, n: int) -> Node:
-        """A to an integer power; see `power` for what is raised."""
+        """The integer power a^n; see `power` for what is raised.
+
+        a^0 is 1 only where a has a value: for a compound it is kept as 0*a + 1.
+        """
         if abs(n) > MAX_EXPONENT:
             raise OverflowError
         if n == 0:
-            return self.const(1)
+            one = self.const(1)
+            return self.add(self.mul(self.const(0), a), one) if self.children(a) else one
         if n == 1:
             return a
         value = self.value_of(a)
@@ -271,9 +300,7 @@ class Graph:
 
     def leaves(self, roots: Iterable[Node]) -> set[str]:
         """The names the roots depend on, by structure."""
-        return {
-            str(self.args[node][0]) for node in self.reachable(roots) if self.op[node] == "var"
-        }
+        return {str(self.args[node][0]) for node in self.reachable(roots) if self.op[node] == "var"}
 
     def substitute(self, roots: Iterable[Node], mapping: Mapping[Node, Node]) -> list[Node]:
         """The roots with some nodes replaced; 0 annihilates in products."""
@@ -296,7 +323,7 @@ class Graph:
         if op == "div" and self.is_zero(args[0]):
             return args[0]
         if op == "ipow":
-            return self.ipow(args[0], int(self.args[node][1]))  # type: ignore[call-overload]  # an int by construction
+            return self.ipow(args[0], self.exponent(node))
         if op == "if":
             return self.choose(*args)
         return self.unary(op, *args) if len(args) == 1 else self.binary(op, *args)

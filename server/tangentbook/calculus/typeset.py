@@ -187,7 +187,7 @@ def _piece(graph: Graph, node: Node, pieces: Mapping[Node, _Piece], style: _Styl
         return _Piece(style.name(str(graph.args[node][0])), _ATOM)
     args = [pieces[child] for child in graph.children(node)]
     if op == "ipow":
-        return _integer_power(int(str(graph.args[node][1])), args[0], style)
+        return _integer_power(graph.exponent(node), args[0], style)
     if op in ("add", "sub", "mul", "div", "neg"):
         return _arithmetic(op, args, style)
     return _other(op, args, style)
@@ -265,7 +265,42 @@ def decimal_text(value: fmpq) -> str | None:
 
 
 _GREEK = frozenset(
-    ["alpha", "beta", "gamma", "delta", "epsilon", "zeta", "eta", "theta", "iota", "kappa", "lambda", "mu", "nu", "xi", "pi", "rho", "sigma", "tau", "upsilon", "phi", "chi", "psi", "omega", "Gamma", "Delta", "Theta", "Lambda", "Xi", "Pi", "Sigma", "Upsilon", "Phi", "Psi", "Omega"]
+    [
+        "alpha",
+        "beta",
+        "gamma",
+        "delta",
+        "epsilon",
+        "zeta",
+        "eta",
+        "theta",
+        "iota",
+        "kappa",
+        "lambda",
+        "mu",
+        "nu",
+        "xi",
+        "pi",
+        "rho",
+        "sigma",
+        "tau",
+        "upsilon",
+        "phi",
+        "chi",
+        "psi",
+        "omega",
+        "Gamma",
+        "Delta",
+        "Theta",
+        "Lambda",
+        "Xi",
+        "Pi",
+        "Sigma",
+        "Upsilon",
+        "Phi",
+        "Psi",
+        "Omega",
+    ]
 )
 _DOTS = ("", r"\dot", r"\ddot", r"\dddot", r"\ddddot")
 

@@ -1,0 +1,1 @@
+"""Requests and results: models, schemas, registers of codes, the registry of tools."""

@@ -8,7 +8,11 @@ from typing import Annotated, Any
 
 from pydantic import BaseModel, BeforeValidator, ConfigDict, WithJsonSchema
 
-MAX_TEXT = 65_536  # characters of one expression: 64 KiB keeps a hostile text from being parsed at all
+from tangentbook.contract.plain import is_array, is_object
+
+MAX_TEXT = (
+    65_536  # characters of one expression: 64 KiB keeps a hostile text from being parsed at all
+)
 
 
 class Model(BaseModel):
@@ -22,7 +26,7 @@ class Model(BaseModel):
 def _scalar(value: object) -> object:
     if isinstance(value, bool) or not isinstance(value, (int, float, str)):
         msg = 'a number or a text such as "52 kN" or "2*pi/3" is expected'
-        raise ValueError(msg)
+        raise ValueError(msg)  # noqa: TRY004 - pydantic turns ValueError into its own error
     if isinstance(value, str):
         return _text(value)
     if isinstance(value, float):
@@ -73,11 +77,11 @@ Name = Annotated[str, BeforeValidator(_name)]
 
 
 def canonical(value: Any) -> Any:  # noqa: ANN401 - JSON is what it is
-    """The canonical form that is digested: maps become lists of pairs, since their order has meaning."""
+    """The canonical form that is digested: maps become lists of pairs, their order has meaning."""
     if isinstance(value, BaseModel):
         return canonical(value.model_dump(mode="json", by_alias=True, exclude_defaults=True))
-    if isinstance(value, dict):
+    if is_object(value):
         return [[key, canonical(item)] for key, item in value.items()]
-    if isinstance(value, (list, tuple)):
+    if is_array(value):
         return [canonical(item) for item in value]
     return value

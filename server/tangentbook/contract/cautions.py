@@ -7,60 +7,64 @@ equations as stated, never of the machine; local codes and licensed practice com
 from __future__ import annotations
 
 GENERAL: tuple[str, ...] = (
-    "Verified, not validated: every statement is about the equations as stated, not about the "
-    "machine they describe.",
+    (
+        "Verified, not validated: every statement is about the equations as stated, not about the "
+        "machine they describe."
+    ),
     "A linear model describes small deviations from its point; how small is not stated here.",
-    "Where people, property or the environment can be harmed, applicable codes and standards and "
-    "the judgement of licensed or otherwise authorised engineers decide.",
+    (
+        "Where people, property or the environment can be harmed, applicable codes and standards "
+        "and the judgement of licensed or otherwise authorised engineers decide."
+    ),
 )
 
-TRADES: dict[str, tuple[str, ...]] = {
+TRADES: dict[str, str] = {
     "flight": (
         "Flight: aerodynamic data hold for one configuration, mass, centre of gravity, Mach and "
-        "altitude range; airworthiness rules and flight test decide.",
+        "altitude range; airworthiness rules and flight test decide."
     ),
     "process": (
         "Process: reaction, heat-transfer and phase data hold for stated compositions; a hazard "
-        "study and independent protection layers are not replaced.",
+        "study and independent protection layers are not replaced."
     ),
     "electric power": (
         "Electric power: network strength, saturation, limiters and protection are only there if "
-        "the equations hold them; grid codes and the network operator decide.",
+        "the equations hold them; grid codes and the network operator decide."
     ),
     "machinery": (
         "Machinery: backlash, dry friction, flexibility and end stops are only there if the "
-        "equations hold them; guarding and machinery regulations apply.",
+        "equations hold them; guarding and machinery regulations apply."
     ),
     "vehicle": (
         "Vehicle: tyre forces saturate, and road, load and driver vary; type approval and road "
-        "tests decide.",
+        "tests decide."
     ),
     "marine": (
         "Marine: hydrodynamic coefficients hold for one loading condition, trim and water depth; "
-        "classification rules and sea trials decide.",
+        "classification rules and sea trials decide."
     ),
     "hydraulics": (
         "Hydraulics: cavitation, line dynamics and the bulk modulus with entrained air are only "
-        "there if the equations hold them; pressure equipment rules apply.",
+        "there if the equations hold them; pressure equipment rules apply."
     ),
     "building": (
         "Building: occupancy, weather and infiltration vary; building codes and the designer of "
-        "record decide.",
+        "record decide."
     ),
     "medical": (
         "Medical: parameters differ between persons and over time; nothing here is a dose, a "
-        "setting or a treatment. Medical device rules and clinicians decide.",
+        "setting or a treatment. Medical device rules and clinicians decide."
     ),
     "biology": (
-        "Biology: populations and rates vary between sites and seasons; parameters are estimates.",
+        "Biology: populations and rates vary between sites and seasons; parameters are estimates."
     ),
     "water": (
         "Water supply: demands, pipe friction and pump curves drift; water-hammer and supply "
-        "security need their own study, and the water authority's rules apply.",
+        "security need their own study, and the water authority's rules apply."
     ),
     "robotics": (
         "Robotics: joint friction, flexibility and payload vary; collaborative-operation and "
-        "machinery rules apply.",
+        "machinery rules apply."
     ),
 }
 
@@ -88,4 +92,4 @@ def trade_cautions(field: str) -> tuple[str, ...]:
     text = field.casefold()
     chosen = {trade for trade in TRADES if trade in text}
     chosen |= {trade for word, trade in _WORDS.items() if word in text}
-    return tuple(line for trade, lines in TRADES.items() if trade in chosen for line in lines)
+    return tuple(line for trade, line in TRADES.items() if trade in chosen)

@@ -47,8 +47,8 @@ CHECKS: dict[str, str] = {
     "point.second-route": "the double-precision point against the refined one",
     "jacobian.second-route": "every entry of A, B, C, D against differences of the equations",
     "jacobian.symbolic": "every partial derivative against those of the symbolic library",
-    "model.remainder": "remainder of the linear model against half the second derivative's bound",
-    "eigenvalues.second-route": "eigenvalues against the characteristic polynomial or a second basis",
+    "model.remainder": "remainder of the model against half the bound of the second derivative",
+    "eigenvalues.second-route": "eigenvalues against characteristic polynomial or second basis",
     "printed.bound": "entries printed as 0 whose value is only known to a bound",
 }
 

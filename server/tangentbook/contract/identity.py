@@ -1,4 +1,4 @@
-"""Who is who: digests of plants and calls, ids, file names (nothing of time, host, user or path)."""
+"""Who is who: digests of plants and calls, ids, file names (nothing of time, host or path)."""
 
 from __future__ import annotations
 

@@ -7,10 +7,9 @@ from typing import Annotated, Any, Literal
 from pydantic import BeforeValidator, ConfigDict, Field, model_validator
 
 from tangentbook.contract.base import Model, Name, Scalar, Text
+from tangentbook.contract.plain import is_array, is_object
 
-Texts = Annotated[
-    tuple[Text, ...], BeforeValidator(lambda v: [v] if isinstance(v, str) else v)
-]
+Texts = Annotated[tuple[Text, ...], BeforeValidator(lambda v: [v] if isinstance(v, str) else v)]
 
 
 class Equation(Model):
@@ -72,20 +71,38 @@ class Definition(Model):
     numeric: bool = False
 
 
-def _equations(value: object) -> object:
-    if isinstance(value, list):
-        return [{"is": item} if isinstance(item, str) else item for item in value]
+def _worded(value: object, field: str) -> object:
+    """Texts of a list or map become {field: text}; whatever is a table already stays."""
+    if is_array(value):
+        return [{field: item} if isinstance(item, str) else item for item in value]
+    if is_object(value):
+        return {
+            key: {field: item} if isinstance(item, str) else item for key, item in value.items()
+        }
     return value
+
+
+def _equations(value: object) -> object:
+    return _worded(value, "is")
 
 
 def _declarations(value: object) -> object:
     """A list of names, or name -> "unit" | {…}: both become name -> {…}."""
-    if isinstance(value, list):
-        return _from_names(value)
-    if isinstance(value, dict):
-        return {
-            key: {"unit": item} if isinstance(item, str) else item for key, item in value.items()
-        }
+    return _from_names(value) if is_array(value) else _worded(value, "unit")
+
+
+def _outputs(value: object) -> object:
+    """Outputs: a text is the expression, not the unit."""
+    return _from_names(value) if is_array(value) else _worded(value, "is")
+
+
+def _definitions(value: object) -> object:
+    return _worded(value, "is")
+
+
+def _parameters(value: object) -> object:
+    if is_object(value):
+        return {key: item if is_object(item) else {"is": item} for key, item in value.items()}
     return value
 
 
@@ -100,33 +117,6 @@ def _from_names(value: list[Any]) -> dict[str, Any]:
             raise ValueError(msg)
         named[item] = {}
     return named
-
-
-def _outputs(value: object) -> object:
-    """Outputs: a text is the expression, not the unit."""
-    if isinstance(value, list):
-        return _from_names(value)
-    if isinstance(value, dict):
-        return {
-            key: {"is": item} if isinstance(item, str) else item for key, item in value.items()
-        }
-    return value
-
-
-def _parameters(value: object) -> object:
-    if isinstance(value, dict):
-        return {
-            key: item if isinstance(item, dict) else {"is": item} for key, item in value.items()
-        }
-    return value
-
-
-def _definitions(value: object) -> object:
-    if isinstance(value, dict):
-        return {
-            key: {"is": item} if isinstance(item, str) else item for key, item in value.items()
-        }
-    return value
 
 
 Declarations = Annotated[dict[Name, Declaration], BeforeValidator(_declarations)]
@@ -167,7 +157,9 @@ class Plant(Model):
 
     name: Text = Field(min_length=1, description="what the plant is called")
     about: Text = ""
-    field: Text = Field(default="", description="trade, selects cautions: flight, process, marine, …")
+    field: Text = Field(
+        default="", description="trade, selects cautions: flight, process, marine, …"
+    )
     time: Text = Field(default="s", description='unit of rates and eigenvalues; "1": dimensionless')
     revision: Text = ""
     source: Text = ""
@@ -180,14 +172,15 @@ class Plant(Model):
         "min max clip if(cond, a, b); pi; literals with a unit as 64.94[1/s]",
     )
     algebraic: Declarations = Field(
-        default_factory=dict, description='unknowns without a rate ("0 = …"): list of names or table'
+        default_factory=dict,
+        description='unknowns without a rate ("0 = …"): names or table',
     )
     states: Declarations = Field(
         default_factory=dict, description="optional: units, order, typical sizes"
     )
     inputs: Declarations = Field(
         default_factory=dict,
-        description='list of names or name -> {unit, role: "control" | "disturbance", limits, rest}',
+        description='names, or name -> {unit, role: "control" | "disturbance", limits, rest}',
     )
     outputs: Outputs = Field(
         default_factory=dict, description="name -> expression; none given: all states"
@@ -195,7 +188,7 @@ class Plant(Model):
     settings: Declarations = Field(default_factory=dict)
     parameters: Annotated[dict[Name, Parameter], BeforeValidator(_parameters)] = Field(
         default_factory=dict,
-        description='name -> number | "number unit" | constant expression | {value, unit, tolerance}',
+        description='name -> number | "number unit" | constant expression | {value, unit, …}',
     )
     definitions: Annotated[dict[Name, Definition], BeforeValidator(_definitions)] = Field(
         default_factory=dict, description="name -> expression, any order, may contain rates"
@@ -208,5 +201,5 @@ class PlantRef(Model):
 
     ref: Text = Field(description="plant id from an earlier reply, or a name of the served folder")
     set: dict[Name, Scalar] = Field(
-        default_factory=dict, description="parameters that differ, as {\"J\": \"2.6e5 kg m^2\"}"
+        default_factory=dict, description='parameters that differ, as {"J": "2.6e5 kg m^2"}'
     )

@@ -7,6 +7,7 @@ from typing import Annotated, Any, Literal
 from pydantic import BeforeValidator, Field, model_validator
 
 from tangentbook.contract.base import Model, Name, Scalar, Text
+from tangentbook.contract.plain import is_array, is_object
 
 
 class Hold(Model):
@@ -24,29 +25,29 @@ class From(Model):
 
 
 def _hold(value: object) -> object:
-    """An object name -> value, or a list of such objects and of {is, equals}: always a list."""
-    if isinstance(value, dict):
+    """An object name -> value, or a list of such objects and of {is, equals}: always a list.
+
+    In an object a name may also stand for a whole condition: label -> {"is": …, "equals": …}.
+    """
+    if is_object(value):
         value = [value]
-    if not isinstance(value, list):
+    if not is_array(value):
         return value
     conditions: list[Any] = []
     for item in value:
-        if isinstance(item, dict) and "is" not in item:
-            conditions.extend({"is": name, "equals": held} for name, held in item.items())
+        if is_object(item) and "is" not in item:
+            conditions.extend(
+                held if is_object(held) else {"is": name, "equals": held}
+                for name, held in item.items()
+            )
         else:
             conditions.append(item)
     return conditions
 
 
-def _hold_entry(value: object) -> object:
-    """`hold` may map a label to {"is": …, "equals": …}."""
-    if isinstance(value, dict):
-        plain = {k: v for k, v in value.items() if not isinstance(v, dict)}
-        nested = [v for v in value.values() if isinstance(v, dict)]
-        if {"is", "equals"} >= plain.keys() and "is" in plain:
-            return _hold(value)
-        return _hold([plain, *nested] if plain else nested)
-    return _hold(value)
+def _as_list(value: object) -> object:
+    """One point stands for a list of one."""
+    return [value] if is_object(value) or isinstance(value, Point) else value
 
 
 Names = Annotated[tuple[Name, ...], BeforeValidator(lambda v: [v] if isinstance(v, str) else v)]
@@ -56,7 +57,7 @@ class Point(Model):
     """How an operating point is asked for; {} is all at rest."""
 
     name: Text = ""
-    hold: Annotated[tuple[Hold, ...], BeforeValidator(_hold_entry)] = Field(
+    hold: Annotated[tuple[Hold, ...], BeforeValidator(_hold)] = Field(
         default=(), description='name -> value, or {"is": expression, "equals": value}'
     )
     moving: dict[Name, Scalar] = Field(default_factory=dict)
@@ -85,7 +86,7 @@ class Point(Model):
 
 PointList = Annotated[
     tuple[Point, ...],
-    BeforeValidator(lambda v: v if isinstance(v, (list, tuple)) else [v]),
+    BeforeValidator(_as_list),
     Field(min_length=1, max_length=1000),
 ]
 

@@ -70,7 +70,7 @@ class LinearModel(Model):
 
 
 class Eigenvalue(Model):
-    """An eigenvalue of A, in rad per `time`; `radius` bounds its distance from the printed value."""
+    """An eigenvalue of A, in rad per `time`; `radius`: distance of the truth from the print."""
 
     re: float
     im: float
@@ -173,10 +173,10 @@ class ReportLink(Model):
 class Validity(Model):
     """What the answer holds for, and what was not looked at."""
 
-    amplitude: list[Any] = []
+    amplitude: list[Any] = Field(default_factory=list)
     duration: float | None = None
-    parameters: dict[str, Any] = {}
-    not_checked: list[str] = []
+    parameters: dict[str, Any] = Field(default_factory=dict)
+    not_checked: list[str] = Field(default_factory=list)
 
 
 class Result(Model):
@@ -188,11 +188,11 @@ class Result(Model):
     outcome: Outcome
     plant: PlantSummary
     answer: str = Field(description="one sentence with its scope")
-    points: list[PointResult] = []
+    points: list[PointResult] = Field(default_factory=list[PointResult])
     complete: bool | None = None
     comparison: list[Any] | None = None
     validity: Validity | None = None
-    checks: list[Check] = []
-    cautions: list[Caution] = []
+    checks: list[Check] = Field(default_factory=list[Check])
+    cautions: list[Caution] = Field(default_factory=list[Caution])
     stopped_by: str | None = None
     report: ReportLink | None = None

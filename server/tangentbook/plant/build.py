@@ -6,11 +6,13 @@ from typing import TYPE_CHECKING
 
 from tangentbook.calculus.graph import Graph
 from tangentbook.errors import DeclarationError, StructureError
-from tangentbook.plant.grammar import names_in, parse_expression
+from tangentbook.plant.grammar import parse_expression
 from tangentbook.plant.model import Definition, Equation, Output, Parameter, Plant, Variable
+from tangentbook.plant.program import names_in
 from tangentbook.plant.scope import Scope, equation_place
 from tangentbook.plant.structure import solve_order
 from tangentbook.plant.units import ONE, Unit, parse_unit
+from tangentbook.plant.usage import is_unused, role_words, used_names
 from tangentbook.plant.values import read_value
 
 if TYPE_CHECKING:
@@ -40,7 +42,7 @@ def build_plant(text: PlantText) -> Plant:
     variables = _variables(scope, states)
     time = parse_unit(text.time, where="time")
     blocks = solve_order(graph, equations, unknowns)
-    used = _used(graph, equations, outputs, parameters, scope)
+    used = used_names(graph, equations, outputs, parameters, scope)
     definitions = _definitions(scope)
     return Plant(
         name=text.name,
@@ -58,8 +60,8 @@ def build_plant(text: PlantText) -> Plant:
         algebraic=tuple(d.name for d in text.algebraic),
         unknowns=unknowns,
         blocks=blocks,
-        roles=_roles(scope, states, outputs, used),
-        unused=tuple(n for n, role in scope.roles.items() if _is_unused(n, role, used)),
+        roles=role_words(scope, states, outputs, used),
+        unused=tuple(n for n, role in scope.roles.items() if is_unused(n, role, used)),
         undeclared=tuple(b for b in orders if text.states and scope.role_of(b) is None),
         explicit_time="t" not in scope.roles and _depends_on_time(graph, equations, outputs),
         scope=scope,
@@ -202,10 +204,7 @@ def _state_names(scope: Scope, orders: dict[str, int]) -> tuple[str, ...]:
         if name not in result:
             result.append(name)
     result.extend(
-        base + "'" * k
-        for base, order in orders.items()
-        if base not in bases
-        for k in range(order)
+        base + "'" * k for base, order in orders.items() if base not in bases for k in range(order)
     )
     unique = tuple(dict.fromkeys(result))
     if len(unique) > MAX_STATES:
@@ -223,9 +222,7 @@ def _rate_names(states: tuple[str, ...], orders: dict[str, int]) -> list[str]:
     return [base + "'" * orders[base] for base in bases]
 
 
-def _outputs(
-    scope: Scope, orders: dict[str, int], states: tuple[str, ...]
-) -> tuple[Output, ...]:
+def _outputs(scope: Scope, orders: dict[str, int], states: tuple[str, ...]) -> tuple[Output, ...]:
     if not scope.text.outputs:
         units = {d.name: d.unit for d in scope.text.states}
         return tuple(
@@ -274,9 +271,7 @@ def _plain_unit(scope: Scope, name: str) -> Unit | None:
     return None
 
 
-def _check_proper(
-    scope: Scope, node: Node, name: str, text: str, orders: dict[str, int]
-) -> None:
+def _check_proper(scope: Scope, node: Node, name: str, text: str, orders: dict[str, int]) -> None:
     for leaf in sorted(scope.graph.leaves([node])):
         base = leaf.rstrip("'")
         order = len(leaf) - len(base)
@@ -383,52 +378,3 @@ def _clock(
     )
     tied = literal or any(u is not None and u.has_time for u in units)
     return time if tied else ONE
-
-
-def _used(
-    graph: Graph,
-    equations: Iterable[Equation],
-    outputs: Iterable[Output],
-    parameters: dict[str, Parameter],
-    scope: Scope,
-) -> set[str]:
-    roots = [*(e.residual for e in equations), *(o.node for o in outputs)]
-    used = graph.leaves(roots)
-    growing = True
-    while growing:
-        more = graph.leaves([parameters[n].value for n in used if n in parameters]) - used
-        used |= more
-        growing = bool(more)
-    programs = [
-        program
-        for k, equation in enumerate(scope.programs)
-        for program in (equation.left, equation.right)
-        if k in set(scope.equation_indices())
-    ]
-    texts = [parse_expression(o.text, "output") for o in outputs]
-    waiting = [name.rstrip("'") for p in (*programs, *texts) for name, _ in names_in(p)]
-    while waiting:
-        name = waiting.pop()
-        if name in scope.definitions and name not in used:
-            used.add(name)
-            waiting.extend(n.rstrip("'") for n, _ in names_in(scope.definitions[name][0]))
-    return used
-
-
-def _is_unused(name: str, role: str, used: set[str]) -> bool:
-    return role in ("parameter", "input", "definition", "algebraic") and name not in used
-
-
-def _roles(
-    scope: Scope, states: tuple[str, ...], outputs: Iterable[Output], used: set[str]
-) -> dict[str, str]:
-    roles: dict[str, str] = dict.fromkeys(states, "state")
-    for name, role in scope.roles.items():
-        roles[name] = "unused" if _is_unused(name, role, used) else role
-    for name in scope.definitions:
-        roles[name] = "definition" if name in used else "unused"
-    for output in outputs:
-        roles.setdefault(output.name, "output")
-    return roles
-
-

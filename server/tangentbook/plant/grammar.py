@@ -18,53 +18,23 @@ special case. Nothing is ever handed to an evaluator of the host language.
 from __future__ import annotations
 
 import sys
-from dataclasses import dataclass
-from typing import Literal, NoReturn
+from typing import NoReturn
 
-from tangentbook.errors import ExpressionError, nearest
+from tangentbook.errors import ExpressionError
+from tangentbook.plant.program import (
+    ALIASES,
+    FUNCTIONS,
+    RESERVED,
+    EquationProgram,
+    Program,
+    Step,
+)
 from tangentbook.plant.tokens import Token, tokenize
 
 MAX_DEPTH = 200
 
 # the deepest legal text takes ten calls a level; the interpreter's usual limit is below that
 sys.setrecursionlimit(max(sys.getrecursionlimit(), 20 * MAX_DEPTH))
-
-FUNCTIONS: dict[str, tuple[int, int]] = {
-    **dict.fromkeys(
-        ["sin", "cos", "tan", "asin", "acos", "atan", "sinh", "cosh", "tanh", "exp", "log", "log10", "sqrt", "abs", "sign"], (1, 1)
-    ),
-    "atan2": (2, 2),
-    "min": (2, 64),
-    "max": (2, 64),
-    "clip": (3, 3),
-}
-"""Functions with their least and greatest number of arguments."""
-
-ALIASES = {"ln": "log", "arcsin": "asin", "arccos": "acos", "arctan": "atan", "arctan2": "atan2"}
-RESERVED = frozenset(("pi", "and", "or", "not"))
-
-Op = Literal["number", "unit", "pi", "name", "rate", "neg", "binary", "call", "if", "not"]
-
-
-@dataclass(frozen=True, slots=True)
-class Step:
-    """One step of a program: what to do with the stack, and the column it comes from."""
-
-    op: Op
-    text: str = ""
-    count: int = 0
-    at: int = 0
-
-
-Program = tuple[Step, ...]
-
-
-@dataclass(frozen=True, slots=True)
-class EquationProgram:
-    """Both sides of "left = right"."""
-
-    left: Program
-    right: Program
 
 
 def parse_expression(text: str, where: str) -> Program:
@@ -111,13 +81,6 @@ def parse_equation(text: str, where: str) -> EquationProgram:
     return EquationProgram(left, tuple(parser.steps))
 
 
-def names_in(program: Program) -> list[tuple[str, int]]:
-    """The names of a program with their primes, in order of occurrence, with 0-based columns."""
-    return [
-        (step.text + "'" * step.count, step.at) for step in program if step.op == "name"
-    ]
-
-
 _COMPARISONS = {"<": "lt", "<=": "le", ">": "gt", ">=": "ge", "==": "eq", "!=": "ne"}
 
 
@@ -151,12 +114,15 @@ class _Parser:
             return
         if token.kind in ("name", "number") or token.text == "(":
             before = self.tokens[self.index - 1]
-            shown = f"{before.text}{chr(39) * before.primes} {token.text}"
+            primed = before.text + "'" * before.primes
             if before.kind == "name" and before.text in FUNCTIONS:
-                self.fail(f"a function needs brackets: {shown}", f"write {before.text}({token.text}…)")
+                self.fail(
+                    f"a function needs brackets: {primed} {token.text}",
+                    f"write {before.text}({token.text}…)",
+                )
             self.fail(
                 f"expected an operator between {before.text!r} and {token.text!r}",
-                f"multiplication is written with *: {before.text}{chr(39) * before.primes}*{token.text}",
+                f"multiplication is written with *: {primed}*{token.text}",
             )
         if token.text == ")":
             self.fail("a closing bracket without an opening one", "remove it or open one before")
@@ -171,9 +137,7 @@ class _Parser:
     def _enter(self) -> None:
         self.depth += 1
         if self.depth > MAX_DEPTH:
-            self.fail(
-                f"nested more than {MAX_DEPTH} deep", "name inner parts in `definitions`"
-            )
+            self.fail(f"nested more than {MAX_DEPTH} deep", "name inner parts in `definitions`")
 
     def _leave(self) -> None:
         self.depth -= 1
@@ -410,14 +374,3 @@ def _lenient_tokens(text: str, where: str) -> list[Token]:
         tokens = tokenize(head, where)
         rest = text.index(head) + len(head)
         return [*tokens[:-1], Token("rest", text[rest:].strip(), rest), Token("end", "", len(text))]
-
-
-def unknown_function(name: str, known: list[str], where: str, at: int) -> ExpressionError:
-    """The error for a name before a bracket that is no function."""
-    return ExpressionError(
-        "expression.function",
-        f"{name} is not a function",
-        where=f"{where}, column {at + 1}",
-        hint=f"a product is written with *: {name}*(…); or "
-        + nearest(name, [*FUNCTIONS, *ALIASES, "if", *known]),
-    )

@@ -8,14 +8,14 @@ from flint import fmpq
 
 from tangentbook.calculus.derive import rate
 from tangentbook.errors import DeclarationError, ExpressionError
-from tangentbook.plant.grammar import FUNCTIONS, unknown_function
+from tangentbook.plant.program import FUNCTIONS, unknown_function
 from tangentbook.plant.units import Unit, parse_unit
 
 if TYPE_CHECKING:
     from collections.abc import Callable
 
     from tangentbook.calculus.graph import Graph, Node
-    from tangentbook.plant.grammar import Program, Step
+    from tangentbook.plant.program import Program, Step
 
 Resolve = "Callable[[str, int, str], Node]"
 """(name, primes, place) -> node; raises where the name has no meaning."""

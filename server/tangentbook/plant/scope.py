@@ -6,16 +6,9 @@ from typing import TYPE_CHECKING
 
 from tangentbook.calculus.derive import rate
 from tangentbook.errors import DeclarationError, ExpressionError, nearest
-from tangentbook.plant.grammar import (
-    FUNCTIONS,
-    RESERVED,
-    EquationProgram,
-    Program,
-    names_in,
-    parse_equation,
-    parse_expression,
-)
+from tangentbook.plant.grammar import parse_equation, parse_expression
 from tangentbook.plant.lower import Lowering
+from tangentbook.plant.program import FUNCTIONS, RESERVED, EquationProgram, Program, names_in
 
 if TYPE_CHECKING:
     from tangentbook.calculus.graph import Graph, Node
@@ -215,8 +208,8 @@ class Scope:
                 "expression.rate-of-input",
                 f"the rate of input {name} is not a quantity of the plant",
                 where=place,
-                hint=f"make {name} a state with an equation of its own (a lag, say), driven by a new "
-                f"input, or shift the rate into a new state such as z = x - c*{name}",
+                hint=f"make {name} a state with an equation of its own (a lag, say), driven by a "
+                f"new input, or shift the rate into a new state such as z = x - c*{name}",
             )
         if role == "algebraic":
             raise ExpressionError(
@@ -251,7 +244,8 @@ class Scope:
         elif name in FUNCTIONS:
             hint = f"{name} is a function: write {name}(…)"
         elif not hint.startswith("did you mean"):
-            hint = f"declare {name} under `parameters`, `inputs` or `algebraic`; {hint}".rstrip("; ")
+            declare = f"declare {name} under `parameters`, `inputs` or `algebraic`"
+            hint = f"{declare}; {hint}" if hint else declare
         return ExpressionError(
             "expression.undeclared",
             f"{name} is not declared, and no equation defines it or its rate",

@@ -77,8 +77,8 @@ def _check_presence(
             others = sorted(graph.leaves([equation.residual]))
             raise StructureError(
                 "structure.hidden-constraint",
-                f"{equation.where} ({equation.text}) holds no highest rate and no algebraic unknown; "
-                f"it binds {_names(others)} among themselves, a hidden constraint",
+                f"{equation.where} ({equation.text}) holds no highest rate and no algebraic "
+                f"unknown; it binds {_names(others)} among themselves, a hidden constraint",
                 where=equation.where,
                 hint="eliminate one of the bound states, or differentiate the constraint and solve "
                 "it together with the equations (reduce the index to 1)",
@@ -97,9 +97,8 @@ def _check_count(
         taken = set(matched)
         free = [name for k, name in enumerate(unknowns) if k not in taken]
         group = _alternatives(rows, matched, unknowns, free)
-        what = f"{free[0]} lacks an equation" if len(group) == 1 else (
-            f"one of {_names(group)} lacks an equation"
-        )
+        which = free[0] if len(group) == 1 else f"one of {_names(group)}"
+        what = f"{which} lacks an equation"
         raise StructureError(
             "structure.too-few-equations",
             f"{count}: {what}",
@@ -121,9 +120,7 @@ def _matching(rows: Sequence[Sequence[int]], columns: int) -> list[int]:
         return [-1] * len(rows)
     indptr = np.cumsum([0, *(len(row) for row in rows)])
     indices = np.array([column for row in rows for column in row], dtype=np.int64)
-    pattern = csr_array(
-        (np.ones(len(indices)), indices, indptr), shape=(len(rows), columns)
-    )
+    pattern = csr_array((np.ones(len(indices)), indices, indptr), shape=(len(rows), columns))
     return [int(c) for c in maximum_bipartite_matching(pattern, perm_type="column")]
 
 
@@ -133,7 +130,7 @@ def _alternatives(
     unknowns: Sequence[str],
     free: Sequence[str],
 ) -> list[str]:
-    """The unknowns that could be the one without an equation (alternating paths from a free one)."""
+    """The unknowns that could be the one without an equation: alternating paths from a free one."""
     reached = {list(unknowns).index(free[0])}
     grows = True
     while grows:
@@ -257,7 +254,9 @@ def _check_rank(
             return
     if null is None:
         return  # no generic point inside the domain was found; the point itself will tell
-    involved = [equations[row] for row, weight in zip(block, null, strict=True) if abs(weight) > 1e-6]
+    involved = [
+        equations[row] for row, weight in zip(block, null, strict=True) if abs(weight) > 1e-6
+    ]
     raise StructureError(
         "structure.hidden-constraint",
         f"{_names([e.where for e in involved])}: a combination of them holds none of the unknowns "
@@ -304,9 +303,7 @@ def _block(
     columns: tuple[str, ...],
     jacobian: Sequence[Gradient],
 ) -> Block:
-    coefficients = [
-        [jacobian[row].get(name, graph.const(0)) for name in columns] for row in block
-    ]
+    coefficients = [[jacobian[row].get(name, graph.const(0)) for name in columns] for row in block]
     flat = [node for line in coefficients for node in line]
     linear = not (graph.leaves(flat) & set(columns))
     solved: tuple[Node, ...] | None = None

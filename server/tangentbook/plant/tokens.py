@@ -1,4 +1,4 @@
-"""Text of an expression -> tokens with columns; all size limits are checked before anything grows."""
+"""Text of an expression -> tokens with columns; limits are checked before anything grows."""
 
 from __future__ import annotations
 
@@ -35,6 +35,7 @@ _PATTERN = re.compile(
     )""",
     re.VERBOSE,
 )
+_LETTERS = re.compile(r"\w+")
 _SAME = str.maketrans(
     {"−": "-", "·": "*", "⋅": "*", "×": "*", "÷": "/", "′": "'", "’": "'", "≤": "\x01", "≥": "\x02"}
 )
@@ -85,9 +86,9 @@ def _primes(text: str, position: int) -> int:
 
 
 def _refuse_letters_behind_primes(text: str, where: str, token: Token, position: int) -> None:
-    if token.primes and position < len(text) and (text[position].isalnum() or text[position] == "_"):
-        rest = re.match(r"\w+", text[position:])
-        tail = rest.group() if rest else ""
+    rest = _LETTERS.match(text, position) if token.primes else None
+    if rest is not None:
+        tail = rest.group()
         wrong = token.text + "'" * token.primes + tail
         base = token.text if token.kind == "name" else "X"
         raise ExpressionError(
@@ -125,11 +126,13 @@ def _check_number(value: str, where: str, at: int) -> None:
             where=place,
             hint="write the number with the digits that are known, or use another unit",
         )
-    decade = int(exponent or 0) + len(mantissa.partition(".")[0].lstrip("0"))
-    if abs(int(exponent or 0)) > MAX_DECADE + MAX_DIGITS or decade > MAX_DECADE or decade < -MAX_DECADE:
+    power = int(exponent or 0)
+    decade = power + len(mantissa.partition(".")[0].lstrip("0"))
+    if abs(power) > MAX_DECADE + MAX_DIGITS or abs(decade) > MAX_DECADE:
         raise ExpressionError(
             "expression.number",
-            f"{value[:24]} is outside the range of numbers, about 1e-{MAX_DECADE} to 1e{MAX_DECADE}",
+            f"{value[:24]} is outside the range of numbers, about 1e-{MAX_DECADE} to "
+            f"1e{MAX_DECADE}",
             where=place,
             hint="use another unit or a scaled quantity",
         )

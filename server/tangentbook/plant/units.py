@@ -30,6 +30,8 @@ if TYPE_CHECKING:
 
 Dimension = tuple[tuple[str, int], ...]
 
+_NO_OFFSET = fmpq(0)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Unit:
@@ -41,7 +43,7 @@ class Unit:
     text: str
     factor: fmpq
     pi_power: int = 0
-    offset: fmpq = fmpq(0)
+    offset: fmpq = _NO_OFFSET
     dimension: Dimension = ()
 
     @property
@@ -135,9 +137,7 @@ def _parsed(text: str) -> Unit:
     raised = _RAISED.sub(lambda m: "^" + m.group(1).translate(_SUPERSCRIPTS), text)
     parser = _UnitParser(text, raised)
     unit = parser.whole()
-    return Unit(
-        text=text, factor=unit.factor, pi_power=unit.pi_power, dimension=unit.dimension
-    )
+    return Unit(text=text, factor=unit.factor, pi_power=unit.pi_power, dimension=unit.dimension)
 
 
 def _bad(text: str, problem: str, hint: str) -> DeclarationError:
@@ -184,17 +184,17 @@ class _UnitParser:
         return unit
 
     def _factor(self) -> Unit:
-        token = self._peek()
+        symbol = self._peek()
         self.next += 1
-        if token == "(":
+        if symbol == "(":
             unit = self._unit()
             if self._peek() != ")":
                 raise _bad(self.text, "a bracket is not closed", 'write as "J/(kg K)"')
             self.next += 1
-        elif not token or token in ")/*·⋅" or token.startswith(("^", "**")):
+        elif not symbol or symbol[0] in ")/*·⋅^":
             raise _bad(self.text, "a unit symbol is missing", 'write as "kg m^2/s"')
         else:
-            unit = _symbol(token, self.text)
+            unit = _symbol(symbol, self.text)
         if self._peek().startswith(("^", "**")):
             exponent = int(self._peek().lstrip("^*"))
             self.next += 1
@@ -203,7 +203,7 @@ class _UnitParser:
 
 
 def _times(a: Unit, b: Unit, power: int) -> Unit:
-    """A * b^power; a level (degC) inside a product counts as its difference."""
+    """The product a * b^power; a level (degC) inside a product counts as its difference."""
     exponents = dict(a.dimension)
     for base, exponent in b.dimension:
         exponents[base] = exponents.get(base, 0) + exponent * power
@@ -219,7 +219,8 @@ def _times(a: Unit, b: Unit, power: int) -> Unit:
 def _registry() -> Any:  # noqa: ANN401 - the library's class is generic over its number type
     from pint import UnitRegistry  # half a second to import: only for plants with such units
 
-    return UnitRegistry(non_int_type=Fraction, cache_folder=None)
+    registry: Any = UnitRegistry  # its annotations know floating-point numbers only
+    return registry(non_int_type=Fraction, cache_folder=None)
 
 
 def _symbol(symbol: str, text: str) -> Unit:

@@ -26,17 +26,20 @@ def run(request: CheckPlant) -> Content:
     """Answer a check-plant call."""
     model: Any = request.plant
     plant, scales, findings = understand_plant(model)
-    summary = plant_summary(model, plant) | {
+    units = unit_texts(plant, scales)
+    summary: JSON = plant_summary(model, plant) | {
         "states": list(plant.states),
         "inputs": list(plant.inputs),
         "outputs": [o.name for o in plant.outputs],
         "algebraic": list(plant.algebraic),
-        "units": unit_texts(plant, scales),
+        "units": units,
         "normal_form": _normal_form(plant),
     }
-    if not any(u for u in summary["units"].values()):
+    if not any(units.values()):
         findings.caution(
-            "no-units", [], "no units were declared: numbers are taken as given, in one coherent set."
+            "no-units",
+            [],
+            "no units were declared: numbers are taken as given, in one coherent set.",
         )
     answer = (
         f"The plant was understood: {plural(len(plant.states), 'state')}, "
@@ -53,7 +56,7 @@ def run(request: CheckPlant) -> Content:
         answer=answer,
         question="How is this plant understood, and is anything missing?",
         plant=summary,
-        units=summary["units"],
+        units=units,
         points=[],
         findings=findings,
         validity={
@@ -78,7 +81,7 @@ def _kind(plant: Plant) -> str:
         return "every equation is solved for its own unknown"
     sizes = ", ".join(str(len(b.unknowns)) for b in coupled)
     implicit = sum(1 for b in plant.blocks if not b.linear)
-    parts = []
+    parts: list[str] = []
     if coupled:
         parts.append(f"coupled unknowns are solved together (blocks of {sizes})")
     if implicit:

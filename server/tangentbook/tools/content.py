@@ -22,9 +22,9 @@ _FLOOR = 1e-20
 class Findings:
     """Check values and cautions as they are collected over the points of a call."""
 
-    checks: list[JSON] = field(default_factory=list)
-    cautions: list[JSON] = field(default_factory=list)
-    not_checked: list[str] = field(default_factory=list)
+    checks: list[JSON] = field(default_factory=list[JSON])
+    cautions: list[JSON] = field(default_factory=list[JSON])
+    not_checked: list[str] = field(default_factory=list[str])
 
     def check(self, code: str, value: float, limit: float, *, point: str, note: str = "") -> None:
         """Record a check value; one beyond its limit is a caution too."""
@@ -55,9 +55,7 @@ class Findings:
 
     def missing(self, code: str, why: str, *, point: str) -> None:
         """Record that a check could not be made."""
-        self.caution(
-            "check-not-made", [point], f"{point}: not confirmed: {CHECKS[code]} ({why})."
-        )
+        self.caution("check-not-made", [point], f"{point}: not confirmed: {CHECKS[code]} ({why}).")
         self.not_checked.append(f"{point}: {CHECKS[code]}")
 
     def caution(self, code: str, about: list[str], text: str) -> None:

@@ -52,7 +52,9 @@ def normal_form(plant: Plant) -> list[Block]:
     graph, known = plant.graph, _names(plant)
     blocks: list[Block] = [heading(3, "Equations"), para("As read:")]
     for definition in plant.definitions.values():
-        body = latex(graph, definition.node, {n: t for n, t in known.items() if n != definition.node})
+        body = latex(
+            graph, definition.node, {n: t for n, t in known.items() if n != definition.node}
+        )
         blocks.append(_formula(latex_name(definition.name), body))
     for equation in plant.equations:
         left, right = latex(graph, equation.left, known), latex(graph, equation.right, known)
@@ -61,8 +63,8 @@ def normal_form(plant: Plant) -> list[Block]:
     blocks.append(heading(3, "Normal form"))
     blocks.append(
         para(
-            f"Solved for {unknowns}, in this order (each block needs only what stands before it; the "
-            "states and inputs are given):"
+            f"Solved for {unknowns}, in this order (each block needs only what stands before it; "
+            "the states and inputs are given):"
         )
     )
     for block in plant.blocks:
@@ -86,8 +88,8 @@ def _block(
         return [para(f"from {where}:"), *formulas]
     return [
         para(
-            f"{where} determine {', '.join(unknowns)} together, not in closed form; their derivatives "
-            "follow by implicit differentiation, ",
+            f"{where} determine {', '.join(unknowns)} together, not in closed form; their "
+            "derivatives follow by implicit differentiation, ",
             Math(r"\mathrm{d}w = -F_w^{-1} (F_x\,\mathrm{d}x + F_u\,\mathrm{d}u)"),
             ".",
         )
@@ -111,8 +113,8 @@ def point_conditions(found: Linearization) -> list[Block]:
     if conditions.free:
         blocks.append(
             para(
-                f"They were solved for {', '.join(conditions.free)} by damped Newton iteration from "
-                "several starts in a fixed order, then refined in 256-bit arithmetic."
+                f"They were solved for {', '.join(conditions.free)} by damped Newton iteration "
+                "from several starts in a fixed order, then refined in 256-bit arithmetic."
             )
         )
     return blocks
@@ -141,8 +143,7 @@ def partial_derivatives(found: Linearization) -> list[Block]:
     ]
     roots = [(f"F_{{{k + 1}}}", row) for k, row in enumerate(partials.equations)]
     roots += [
-        (latex_name(o.name), row)
-        for o, row in zip(plant.outputs, partials.outputs, strict=True)
+        (latex_name(o.name), row) for o, row in zip(plant.outputs, partials.outputs, strict=True)
     ]
     for label, row in roots:
         for name, node in row.items():
@@ -173,8 +174,7 @@ def _intermediates(
     nodes = [d.node for d in plant.definitions.values()]
     numbers = Function(plant.graph, names, nodes).balls(values)
     rows = [
-        [Code(name), shown(value)]
-        for name, value in zip(plant.definitions, numbers, strict=True)
+        [Code(name), shown(value)] for name, value in zip(plant.definitions, numbers, strict=True)
     ]
     return [
         para("Values of the definitions at the point, in coherent SI units:"),
@@ -226,6 +226,9 @@ def derivation(found: Linearization, stem: str) -> tuple[list[Block], dict[str, 
     document = ReportDocument((heading(1, f"{plant.name}: derivation"), *blocks))
     return [
         heading(2, "Derivation"),
-        para(f"The derivation for {len(plant.states)} states stands in the file ", Code(name),
-             " beside this report."),
+        para(
+            f"The derivation for {len(plant.states)} states stands in the file ",
+            Code(name),
+            " beside this report.",
+        ),
     ], {"derivation.md": write(document)}

@@ -97,7 +97,9 @@ def _with_outputs(plant: PlantModel, outputs: dict[str, str] | list[str] | None)
     from tangentbook.contract.plant import Declaration  # the model is rebuilt, not mutated
 
     if isinstance(outputs, dict):
-        declared = {name: Declaration.model_validate({"is": text}) for name, text in outputs.items()}
+        declared = {
+            name: Declaration.model_validate({"is": text}) for name, text in outputs.items()
+        }
     else:
         declared = {
             name: plant.outputs.get(name) or Declaration.model_validate({}) for name in outputs
@@ -125,7 +127,7 @@ class _Work:
 
     def add(self, located: Located) -> None:
         """Linearize at one point."""
-        self.sections += point_section(located, self.scales)
+        self.sections += point_section(located)
         self.lines.append(point_line(located, self.scales))
         if isinstance(located.found, NoPoint):
             self.answers.append(answer_line(located, self.scales))
@@ -164,7 +166,9 @@ class _Work:
                 "large-plant", [], f"{ident}: the matrices stand in a file beside the report."
             )
         if found.kinks.kind == "single-valued":
-            findings.caution("switch-at-point", list(found.kinks.active), f"{ident}: {found.kinks.why}.")
+            findings.caution(
+                "switch-at-point", list(found.kinks.active), f"{ident}: {found.kinks.why}."
+            )
         model_checks(found, model, findings, ident)
         stability = stability_result(found, self.scales)
         time = entry["time"]
@@ -210,8 +214,10 @@ def _answer(
 def _lines(model: DeclaredModel, entry: JSON, stability: JSON | None) -> list[str]:
     lines: list[str] = []
     if len(model.states) <= SHORT_STATES:
-        lines.append(f"states {_list(model.states)}, inputs {_list(model.inputs)}, "
-                     f"outputs {_list(model.outputs)}")
+        lines.append(
+            f"states {_list(model.states)}, inputs {_list(model.inputs)}, "
+            f"outputs {_list(model.outputs)}"
+        )
         for name in "ABCD":
             rows = getattr(model, name)
             if rows and rows[0]:

@@ -55,7 +55,7 @@ def worst_outcome(entries: Sequence[JSON]) -> str:
     return max((e["outcome"] for e in entries), key=WORST.index)
 
 
-def point_section(located: Located, scales: Scales) -> list[Block]:
+def point_section(located: Located) -> list[Block]:
     """The section of one point."""
     entry = located.entry
     blocks: list[Block] = [heading(2, f"Operating point {located.title}")]
@@ -86,10 +86,16 @@ def _asked(point: Point) -> str:
     return text
 
 
+def no_point_line(located: Located) -> str:
+    """Why there is no operating point, in a line of text."""
+    entry = located.entry
+    return f"{located.title}: no operating point ({entry['reason']}): {entry['why']}"
+
+
 def point_line(located: Located, scales: Scales) -> str:
     """One point in a line of text."""
     if isinstance(located.found, NoPoint):
-        return f"{located.title}: no operating point ({located.entry['reason']}): {located.entry['why']}"
+        return no_point_line(located)
     point = located.found
     names = point.conditions.columns
     shown = [quantity(scales, n, point.values[n]) for n in names[:16]]

@@ -181,7 +181,9 @@ def _up(value: float) -> float:
     return float(f"{math.ceil(value / 10.0**exponent * (1 - 1e-12))}e{exponent}")
 
 
-def model_checks(found: Linearization, model: DeclaredModel, findings: Findings, ident: str) -> None:
+def model_checks(
+    found: Linearization, model: DeclaredModel, findings: Findings, ident: str
+) -> None:
     """Second routes, remainder, eigenvalues and printed zeros."""
     routes: Sequence[tuple[str, Confirmation | None, float]] = (
         ("jacobian.second-route", found.differences, SECOND_ROUTE_LIMIT),
@@ -228,13 +230,17 @@ def eigenvalue_cautions(stability: JSON, findings: Findings, ident: str, time: s
         findings.caution(
             "eigenvalue-right",
             [],
-            f"{ident}: {plural(sum(e['count'] for e in right), 'eigenvalue')} with positive real part, "
-            f"the rightmost {right[0]['re']:.6g}{per}: with inputs held, deviations grow.",
+            f"{ident}: {_count(right)} with positive real part, the rightmost "
+            f"{right[0]['re']:.6g}{per}: with inputs held, deviations grow.",
         )
     if near:
         findings.caution(
             "eigenvalue-near-axis",
             [],
-            f"{ident}: {plural(sum(e['count'] for e in near), 'eigenvalue')} with a real part that is "
-            "zero or too close to zero to tell its side: the linear model alone cannot decide stability.",
+            f"{ident}: {_count(near)} with a real part that is zero or too close to zero to tell "
+            "its side: the linear model alone cannot decide stability.",
         )
+
+
+def _count(eigenvalues: Sequence[JSON]) -> str:
+    return plural(sum(e["count"] for e in eigenvalues), "eigenvalue")

@@ -1,5 +1,7 @@
-"""Numbers as people and JSON see them: decimal, half to even on the exact value, no more digits
-than are known, no -0."""
+"""Numbers as people and JSON see them.
+
+Decimal, rounded half to even on the exact value, no more digits than are known, no -0.
+"""
 
 from __future__ import annotations
 

@@ -8,16 +8,15 @@ from __future__ import annotations
 import importlib
 from typing import Any
 
-import flint  # noqa: F401 - warms the worker
-import numpy as np  # noqa: F401 - warms the worker
-
 from tangentbook._version import __version__
-from tangentbook.contract.registry import tool_named
+from tangentbook.contract.registry import TOOLS, tool_named
 from tangentbook.contract.requests import understand
 from tangentbook.contract.results import SCHEMA
-from tangentbook.tools import linearize  # noqa: F401 - warms the worker
 from tangentbook.tools.sections import report
 from tangentbook_reports import write
+
+# a worker says that it is ready once this module is imported: it shall be warm by then
+_MODULES = {spec.name: importlib.import_module(spec.module) for spec in TOOLS}
 
 
 def perform(tool: str, arguments: dict[str, Any]) -> dict[str, Any]:
@@ -35,7 +34,7 @@ def perform(tool: str, arguments: dict[str, Any]) -> dict[str, Any]:
     """
     spec = tool_named(tool)
     request = understand(spec.request, arguments)
-    content = importlib.import_module(spec.module).run(request)
+    content = _MODULES[tool].run(request)
     result: dict[str, Any] = {
         "schema": SCHEMA,
         "tool": tool,

@@ -129,8 +129,8 @@ def _cautions(point: OperatingPoint, scales: Scales, findings: Findings, ident: 
         findings.caution(
             "assumed",
             names,
-            f"{ident}: no condition depends on {', '.join(names)}; the guess, else 0, was taken, and "
-            "the linear model is the same for every value.",
+            f"{ident}: no condition depends on {', '.join(names)}; the guess, else 0, was taken, "
+            "and the linear model is the same for every value.",
         )
     if point.redundant:
         findings.caution(
@@ -150,8 +150,8 @@ def _cautions(point: OperatingPoint, scales: Scales, findings: Findings, ident: 
         findings.caution(
             "ill-conditioned",
             list(conditions.free),
-            f"{ident}: the point is ill-conditioned (condition number {point.conditioning:.1g} after "
-            "scaling).",
+            f"{ident}: the point is ill-conditioned (condition number {point.conditioning:.1g} "
+            "after scaling).",
         )
     if not point.settled:
         findings.caution(
@@ -165,7 +165,9 @@ def _cautions(point: OperatingPoint, scales: Scales, findings: Findings, ident: 
 
 
 def _others_text(point: OperatingPoint, scales: Scales, ident: str) -> str:
-    described = [_described(point.others[k], point, scales) for k in range(min(3, len(point.others)))]
+    described = [
+        _described(point.others[k], point, scales) for k in range(min(3, len(point.others)))
+    ]
     more = f" and {len(point.others) - 3} more" if len(point.others) > 3 else ""
     return (
         f"{ident}: other starts led to other points that meet the same conditions: "
@@ -186,9 +188,7 @@ def quantity(scales: Scales, name: str, value: arb) -> str:
     return f"{name} = {shown(scales.value(name, value))}{shown_unit}"
 
 
-def _limit_cautions(
-    point: OperatingPoint, scales: Scales, findings: Findings, ident: str
-) -> None:
+def _limit_cautions(point: OperatingPoint, scales: Scales, findings: Findings, ident: str) -> None:
     for entry in margins(point, scales):
         if entry["margin"] < 0:
             unit = f" {entry['unit']}" if entry["unit"] else ""
@@ -200,9 +200,7 @@ def _limit_cautions(
             )
 
 
-def no_point_result(
-    missing: NoPoint, scales: Scales, *, place: tuple[int, str, str]
-) -> JSON:
+def no_point_result(missing: NoPoint, scales: Scales, *, place: tuple[int, str, str]) -> JSON:
     """The entry of `points` where there is no operating point."""
     index, ident, name = place
     entry: JSON = {
@@ -241,5 +239,3 @@ def sensitivity_result(
         for name, row in found.items()
         if row
     }
-
-

@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING, Any
 from tangentbook._version import __version__
 from tangentbook.contract.cautions import GENERAL, trade_cautions
 from tangentbook.contract.identity import call_digest, plant_digest, resolved_arguments
+from tangentbook.contract.plain import is_array, is_object
 from tangentbook_reports import Code, Document, Fence, Strong, Text, bullets, heading, para, table
 
 if TYPE_CHECKING:
@@ -98,7 +99,7 @@ def _validity(content: Content, plant: Plant) -> list[Block]:
 
 
 def _evidence(plant: Plant) -> list[list[str]]:
-    """Which evidence came with the plant (in the spirit of NASA-STD-7009A's credibility factors)."""
+    """Which evidence came with the plant (in the spirit of NASA-STD-7009A)."""
     sourced = sum(1 for p in plant.parameters.values() if p.source)
     toleranced = sum(1 for p in plant.parameters.values() if p.tolerance is not None)
     count = len(plant.parameters)
@@ -143,9 +144,7 @@ def _small(value: float) -> str:
 
 def _plant_as_read(plant: Plant, content: Content) -> list[Block]:
     blocks: list[Block] = [heading(2, "The plant as read")]
-    rows = [
-        [str(k + 1), Code(e.is_), e.label, e.source] for k, e in enumerate(plant.equations)
-    ]
+    rows = [[str(k + 1), Code(e.is_), e.label, e.source] for k, e in enumerate(plant.equations)]
     blocks.append(table(["No.", "Equation", "Label", "Source"], rows, align="rlll"))
     blocks += _quantities(plant, content)
     if plant.definitions:
@@ -224,10 +223,10 @@ def compact_json(value: JSON) -> str:
 
 def _lines(value: Any, depth: int) -> str:  # noqa: ANN401 - JSON
     flat = json.dumps(value, ensure_ascii=False, allow_nan=False)
-    if not isinstance(value, (dict, list)) or not value or len(flat) + depth <= 100:
+    if len(flat) + depth <= 100 or not (is_object(value) or is_array(value)):
         return flat
     pad = " " * (depth + 1)
-    if isinstance(value, dict):
+    if is_object(value):
         items = [
             f"{pad}{json.dumps(k, ensure_ascii=False)}: {_lines(v, depth + 1)}"
             for k, v in value.items()

@@ -76,8 +76,8 @@ def matrix_tables(model: DeclaredModel, entry: JSON, file: str) -> list[Block]:
             Math(r"\Delta\dot{x} = f_0 + A\,\Delta x + B\,\Delta u"),
             ", ",
             Math(r"y = y_0 + C\,\Delta x + D\,\Delta u"),
-            f". An entry is the unit of its row{per} (A, B) or the unit of its row (C, D), over the "
-            "unit of its column.",
+            f". An entry is the unit of its row{per} (A, B) or the unit of its row (C, D), over "
+            "the unit of its column.",
         )
     ]
     if len(model.states) > DENSE_STATES:
@@ -101,7 +101,9 @@ def matrix_tables(model: DeclaredModel, entry: JSON, file: str) -> list[Block]:
     gain = model.gain()
     if gain is not None:
         blocks.append(heading(4, "Gain at rest"))
-        blocks.append(para("Output per input once everything has settled: ", Math(r"D - C A^{-1} B"), "."))
+        blocks.append(
+            para("Output per input once everything has settled: ", Math(r"D - C A^{-1} B"), ".")
+        )
         blocks += _matrix("y/u", gain, model.outputs, model.inputs)
     elif "dc_gain_note" in entry:
         blocks.append(heading(4, "Gain at rest"))

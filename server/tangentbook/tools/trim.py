@@ -10,6 +10,7 @@ from tangentbook.tools.content import Content
 from tangentbook.tools.derivation import FULL_STATES, normal_form
 from tangentbook.tools.located import (
     locate,
+    no_point_line,
     point_line,
     point_section,
     question,
@@ -35,7 +36,7 @@ def run(request: Trim) -> Content:
     points = locate(plant, scales, findings, request.point)
     sections: list[Block] = []
     for located in points:
-        sections += point_section(located, scales)
+        sections += point_section(located)
         if isinstance(located.found, OperatingPoint):
             sections += _sensitivity(located, scales)
     entries = [p.entry for p in points]
@@ -77,14 +78,14 @@ def tolerances(model: Any) -> JSON:  # noqa: ANN401 - the plant of the request
 def answer_line(located: Located, scales: Scales) -> str:
     """The answer about one point, with its scope."""
     if isinstance(located.found, NoPoint):
-        return f"{located.title}: no operating point ({located.entry['reason']}): {located.entry['why']}."
+        return no_point_line(located) + "."
     point = located.found
     free = list(point.conditions.free)[:4]
     values = ", ".join(quantity(scales, n, point.values[n]) for n in free)
     found = f" at {values}" if values else ""
     return (
-        f"{located.title}: the equations as stated are at rest{found}; computed twice, not shown to "
-        "be the only such point."
+        f"{located.title}: the equations as stated are at rest{found}; computed twice, not shown "
+        "to be the only such point."
     )
 
 

@@ -45,7 +45,9 @@ def understand_plant(model: PlantModel) -> tuple[Plant, Scales, Findings]:
         )
     if plant.explicit_time:
         findings.caution(
-            "explicit-time", ["t"], "the equations contain the time t explicitly: nothing is at rest."
+            "explicit-time",
+            ["t"],
+            "the equations contain the time t explicitly: nothing is at rest.",
         )
     return plant, Scales(plant), findings
 
