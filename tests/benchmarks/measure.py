@@ -17,8 +17,6 @@ from typing import TYPE_CHECKING
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping, Sequence
 
-Job = "Callable[[], object]"
-
 
 def seconds(job: Callable[[], object]) -> float:
     """One run, with the garbage of earlier ones out of the way."""

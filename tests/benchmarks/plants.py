@@ -167,8 +167,8 @@ _BALLOON_PARAMETERS = {
 def balloon() -> Case:
     """A moored balloon in a steady wind; at rest with all controls neutral."""
     lines = _BALLOON.strip().replace("; ", "\n").splitlines()
-    states = "x y z phi th psi u v w p q r".split()
-    inputs = "de dr da dT".split()
+    states = ["x", "y", "z", "phi", "th", "psi", "u", "v", "w", "p", "q", "r"]
+    inputs = ["de", "dr", "da", "dT"]
     text = _plant(
         "Moored balloon", lines, states=states, inputs=inputs, parameters=_BALLOON_PARAMETERS
     )

@@ -51,12 +51,14 @@ def walk(case: Case) -> Walk:
 
     def trim() -> None:
         point = find_point(plant, case.point)
-        if not isinstance(point, OperatingPoint):
-            raise ArithmeticError(point.why)
-        found.append(point)
+        if isinstance(point, OperatingPoint):
+            found.append(point)
 
     trimmed = seconds(trim)
     nodes.append(len(plant.graph))
+    if not found:
+        msg = f"{plant.name}: no operating point"
+        raise ArithmeticError(msg)
     models: list[Linearization] = []
     modelled = seconds(lambda: models.append(linearize(found[0])))
     if models[0].model is None:

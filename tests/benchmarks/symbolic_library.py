@@ -19,8 +19,6 @@ if TYPE_CHECKING:
 
     from tangentbook.calculus.graph import Graph, Node
 
-Evaluate = "Callable[[Sequence[float]], Sequence[float]]"
-
 
 def prepared(
     graph: Graph, nodes: Sequence[Node], columns: Sequence[str], names: Sequence[str]
@@ -35,8 +33,7 @@ def prepared(
     outputs: list[Any] = list(expressions)
     for expression in expressions:
         own = expression.free_symbols
-        for name in columns:
-            if name in symbols and symbols[name] in own:
-                outputs.append(sympy.diff(expression, symbols[name]))
+        present = [symbols[name] for name in columns if name in symbols]
+        outputs += [sympy.diff(expression, symbol) for symbol in present if symbol in own]
     arguments = [symbols.get(name, sympy.Dummy()) for name in names]
     return sympy.lambdify([arguments], outputs, modules="math", cse=True)

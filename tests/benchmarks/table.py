@@ -22,7 +22,9 @@ def times_over(ratio: float) -> str:
     return f"{ratio:.3g}x"
 
 
-def show(title: str, heads: Sequence[str], rows: Sequence[Sequence[str]], *, note: str = "") -> None:
+def show(
+    title: str, heads: Sequence[str], rows: Sequence[Sequence[str]], *, note: str = ""
+) -> None:
     """Print one table, with what it means below."""
     lines = [f"## {title}", "", _line(heads), _line(["---"] * len(heads)), *map(_line, rows), ""]
     if note:

@@ -18,6 +18,7 @@ import functools
 import re
 from dataclasses import dataclass
 from fractions import Fraction
+from importlib.resources import files
 from typing import TYPE_CHECKING, Any
 
 from flint import fmpq
@@ -238,7 +239,27 @@ def _symbol(symbol: str, text: str) -> Unit:
         factor, base = _registry().get_root_units(symbol)
     except Exception:  # noqa: BLE001 - the library raises several unrelated classes for unknown symbols
         raise _bad(text, f"{symbol!r} is not a known unit", _near_unit(symbol)) from None
+    if _is_constant(symbol):
+        raise _bad(
+            text,
+            f"{symbol!r} is a constant of nature, not a unit",
+            "make the constant a parameter; " + _near_unit(symbol),
+        )
     return _from_library(symbol, Fraction(factor), dict(base._units), text)  # noqa: SLF001 - no public mapping
+
+
+@functools.lru_cache(maxsize=1)
+def _constants() -> frozenset[str]:
+    """Names that the library defines as constants of nature (c, k, e … are no units here)."""
+    listed = files("pint").joinpath("constants_en.txt").read_text("utf-8")
+    names = {line.partition("=")[0].strip() for line in listed.splitlines() if "=" in line}
+    # units by the trade's use, in spite of standing in that list
+    return frozenset(names - {"standard_gravity", "standard_atmosphere"})
+
+
+def _is_constant(symbol: str) -> bool:
+    parsed = _registry().parse_unit_name(symbol)
+    return bool(parsed) and parsed[0][1] in _constants()
 
 
 def _near_unit(symbol: str) -> str:

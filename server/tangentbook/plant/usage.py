@@ -22,6 +22,7 @@ def used_names(
     parameters: dict[str, Parameter],
     scope: Scope,
 ) -> set[str]:
+    """The names that equations and outputs need, directly, by a definition or by a parameter."""
     roots = [*(e.residual for e in equations), *(o.node for o in outputs)]
     used = graph.leaves(roots)
     growing = True
@@ -29,12 +30,8 @@ def used_names(
         more = graph.leaves([parameters[n].value for n in used if n in parameters]) - used
         used |= more
         growing = bool(more)
-    programs = [
-        program
-        for k, equation in enumerate(scope.programs)
-        for program in (equation.left, equation.right)
-        if k in set(scope.equation_indices())
-    ]
+    kept = [scope.programs[k] for k in scope.equation_indices()]
+    programs = [program for equation in kept for program in (equation.left, equation.right)]
     texts = [parse_expression(o.text, "output") for o in outputs]
     waiting = [name.rstrip("'") for p in (*programs, *texts) for name, _ in names_in(p)]
     while waiting:
@@ -46,12 +43,14 @@ def used_names(
 
 
 def is_unused(name: str, role: str, used: set[str]) -> bool:
+    """Whether a declared name serves nothing."""
     return role in ("parameter", "input", "definition", "algebraic") and name not in used
 
 
 def role_words(
     scope: Scope, states: tuple[str, ...], outputs: Iterable[Output], used: set[str]
 ) -> dict[str, str]:
+    """The role of every name of the plant, "unused" among them; an output's own name last."""
     roles: dict[str, str] = dict.fromkeys(states, "state")
     for name, role in scope.roles.items():
         roles[name] = "unused" if is_unused(name, role, used) else role
