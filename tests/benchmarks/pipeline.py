@@ -29,7 +29,7 @@ if TYPE_CHECKING:
 
 GROWTH_SIZES = (50, 200, 1000)
 TARGETS = {12: "at least 100x", 200: "at least 200x"}
-STAGES = ("parse and build", "derivatives", "generate and compile")
+STAGES: tuple[str, ...] = ("parse and build", "derivatives", "generate and compile")
 
 
 class Pipeline:
@@ -112,7 +112,7 @@ def against_the_symbolic_library(*, quick: bool) -> None:
     """The whole way and one evaluation, both in the same run."""
     sizes = (12, 50) if quick else (12, 50, 200)
     _versus(2, rounds=1)  # whatever the library sets up on first use
-    found = [_versus(n, rounds=1 if n == 200 else 3) for n in sizes]
+    found = [_versus(n, rounds=3) for n in sizes]
     show(
         "Text to f and sparse J, ready to be called",
         ["states", "own", "symbolic library", "ratio", "target"],

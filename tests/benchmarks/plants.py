@@ -13,11 +13,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from tangentbook.analysis.conditions import PointText
 from tangentbook.plant.source import DeclaredText, EquationText, ParameterText, PlantText
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
 
 NEIGHBOURS = 3
 INPUTS = 4
@@ -41,11 +45,11 @@ def case_of_size(n: int) -> Case:
 
 def _plant(
     name: str,
-    equations: list[str],
+    equations: Sequence[str],
     *,
-    states: list[str],
-    inputs: list[str],
-    parameters: dict[str, float] | None = None,
+    states: Sequence[str],
+    inputs: Sequence[str],
+    parameters: Mapping[str, float] | None = None,
 ) -> PlantText:
     return PlantText(
         name=name,

@@ -129,7 +129,8 @@ def by_remainder(at: Surroundings, model: LinearModel) -> Confirmation:
             place = offset + at.columns.index(column)
             step = at.step(column)
             base[place] = arb_series([at.base[place] + step * unit, step, 0], 3)
-        reach = {name: _reach(row, group, at) for name, row in model.unknowns.items()}
+        steps = {column: at.step(column) for column in group}
+        reach = {name: _reach(row, steps) for name, row in model.unknowns.items()}
         try:
             ahead = at.rates.values(at.displaced(group, 1), at.unknowns)
             series = at.rates.series(base, at.unknowns, reach)
@@ -147,13 +148,11 @@ def by_remainder(at: Surroundings, model: LinearModel) -> Confirmation:
     return worst.result()
 
 
-def _reach(row: Row, group: Sequence[str], at: Surroundings) -> arb:
-    total = _TINY
-    for column in group:
-        if column in row:
-            total += 4 * abs(row[column]) * at.step(column)
-        else:
-            total += at.step(column) * arb(2) ** -60
+def _reach(row: Row, steps: Mapping[str, arb]) -> arb:
+    """How far an unknown is expected to move: what the model says, generously, and a little."""
+    total = _TINY + max(steps.values(), key=float) * arb(2) ** -60
+    for column in row.keys() & steps.keys():
+        total += 4 * abs(row[column]) * steps[column]
     return total
 
 

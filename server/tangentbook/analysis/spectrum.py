@@ -61,11 +61,8 @@ def spectrum(model: LinearModel) -> Spectrum:
         if len(block) == 1:
             found.append(_single(model.rate_entry(block[0], block[0])))
             continue
-        matrix = arb_mat(
-            len(block), len(block), [model.rate_entry(r, c) for r in block for c in block]
-        )
         small = len(block) <= HIGH_PRECISION_BLOCK
-        values, difference = _precise(matrix) if small else _double(matrix)
+        values, difference = _precise(_matrix(model, block)) if small else _double(model, block)
         routes.add("characteristic polynomial" if small else "double precision twice")
         found += values
         worst = max(worst, difference)
@@ -100,6 +97,11 @@ def _blocks(model: LinearModel) -> list[list[str]]:
     for name, label in zip(states, labels, strict=True):
         groups[int(label)].append(name)
     return groups
+
+
+def _matrix(model: LinearModel, block: Sequence[str]) -> arb_mat:
+    size = len(block)
+    return arb_mat(size, size, [model.rate_entry(r, c) for r in block for c in block])
 
 
 def _precise(matrix: arb_mat) -> tuple[list[Eigenvalue], float]:
@@ -202,10 +204,15 @@ def _real_if_tiny(value: acb, radius: float) -> acb:
     return acb(real, imag)
 
 
-def _double(matrix: arb_mat) -> tuple[list[Eigenvalue], float]:
+def _double(model: LinearModel, block: Sequence[str]) -> tuple[list[Eigenvalue], float]:
     """LAPACK on the block and on its transpose in another basis."""
-    size = matrix.nrows()
-    dense = np.array([[float(matrix[i, j].mid()) for j in range(size)] for i in range(size)])
+    size = len(block)
+    position = {name: k for k, name in enumerate(block)}
+    dense = np.zeros((size, size))
+    for i, row in enumerate(block):
+        for column, value in model.rates[row].items():
+            if column in position:
+                dense[i, position[column]] = float(value.mid())
     first = eigvals(dense)
     random = np.random.default_rng(size)
     basis, _ = np.linalg.qr(random.standard_normal((size, size)))

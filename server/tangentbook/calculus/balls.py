@@ -99,7 +99,10 @@ def _sign_of(a: arb) -> int | None:
 
 
 def _sign(a: Ball) -> Ball:
-    sign = _sign_of(_head(a))
+    head = _head(a)
+    if head.is_nan():
+        return _nan_like(a)
+    sign = _sign_of(head)
     if sign is None:
         return arb(-1).union(arb(1)) if isinstance(a, arb) else _nan_like(a)
     if sign == 0 and isinstance(a, arb_series) and a.length() > 1:

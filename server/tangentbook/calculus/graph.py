@@ -7,6 +7,7 @@ Only exact rationals are folded, and only up to a size: everything else stays as
 
 from __future__ import annotations
 
+import operator
 from typing import TYPE_CHECKING, Any
 
 from flint import fmpq
@@ -56,6 +57,14 @@ BINARY = [
     "and",
     "or",
 ]
+
+
+_EXACT: dict[str, Callable[[fmpq, fmpq], fmpq]] = {
+    "add": operator.add,
+    "sub": operator.sub,
+    "mul": operator.mul,
+    "div": operator.truediv,
+}
 
 
 class Graph:
@@ -136,12 +145,7 @@ class Graph:
         x, y = self.value_of(a), self.value_of(b)
         if x is None or y is None:
             return None
-        result = {
-            "add": lambda: x + y,
-            "sub": lambda: x - y,
-            "mul": lambda: x * y,
-            "div": lambda: x / y,
-        }[op]()
+        result = _EXACT[op](x, y)
         return self.const(result) if result.height_bits() <= MAX_CONSTANT_BITS else None
 
     def add(self, a: Node, b: Node) -> Node:

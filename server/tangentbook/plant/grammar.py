@@ -67,6 +67,8 @@ def parse_equation(text: str, where: str) -> EquationProgram:
     """
     parser = _Parser(text, where)
     parser.sum()
+    if parser.token.text == "==":
+        parser.fail("an equation has one equals sign", "write = here; == compares inside if(…)")
     if parser.token.text != "=":
         if parser.token.kind == "end":
             parser.fail('an equation is "left = right"; the equals sign is missing', "add = …")
@@ -113,17 +115,7 @@ class _Parser:
         if token.kind == "end":
             return
         if token.kind in ("name", "number") or token.text == "(":
-            before = self.tokens[self.index - 1]
-            primed = before.text + "'" * before.primes
-            if before.kind == "name" and before.text in FUNCTIONS:
-                self.fail(
-                    f"a function needs brackets: {primed} {token.text}",
-                    f"write {before.text}({token.text}…)",
-                )
-            self.fail(
-                f"expected an operator between {before.text!r} and {token.text!r}",
-                f"multiplication is written with *: {primed}*{token.text}",
-            )
+            self._no_operator(self.tokens[self.index - 1], token)
         if token.text == ")":
             self.fail("a closing bracket without an opening one", "remove it or open one before")
         if token.text in _COMPARISONS:
@@ -132,7 +124,22 @@ class _Parser:
             )
         if token.text == ",":
             self.fail("a comma outside a function", "the decimal sign is a point: 3.5")
+        if token.kind == "unit":
+            self._no_operand(token)
         self.fail(f"unexpected {token.text!r}", "expected an operator or the end")
+
+    def _no_operator(self, before: Token, token: Token) -> NoReturn:
+        if before.kind == "name" and before.text in FUNCTIONS:
+            self.fail(
+                f"a function needs brackets: {before.text} {token.text}",
+                f"write {before.text}({token.text}…)",
+            )
+        left = "(…)" if before.text == ")" else before.text
+        right = "(…)" if token.text == "(" else token.text
+        self.fail(
+            f"expected an operator between {before.text!r} and {token.text!r}",
+            f"multiplication is written with *: {left}{before.primes * chr(39)}*{right}",
+        )
 
     def _enter(self) -> None:
         self.depth += 1
@@ -256,6 +263,8 @@ class _Parser:
             self.sum()
             self._comma("if(condition, value, otherwise)")
             self.sum()
+            if self.token.text == ",":
+                self.fail("if takes 3 arguments, got more", "write if(condition, value, otherwise)")
             self._close(opening)
             self.steps.append(Step("if", "if", 3, token.at))
         elif name == "d":
@@ -279,7 +288,7 @@ class _Parser:
             least, most = FUNCTIONS[name]
             if not least <= count <= most:
                 self.fail(
-                    f"{name} takes {least if least == most else f'{least} or more'} "
+                    f"{name} takes {least if least == most else f'{least} to {most}'} "
                     f"argument{'s' if most > 1 else ''}, got {count}",
                     "the decimal sign is a point; arguments are separated by commas",
                     at=token.at,

@@ -69,10 +69,11 @@ def names_in(program: Program) -> list[tuple[str, int]]:
 
 def unknown_function(name: str, known: list[str], where: str, at: int) -> ExpressionError:
     """The error for a name before a bracket that is no function."""
+    close = nearest(name, [*FUNCTIONS, *ALIASES, "if", *known])
     return ExpressionError(
         "expression.function",
         f"{name} is not a function",
         where=f"{where}, column {at + 1}",
-        hint=f"a product is written with *: {name}*(…); or "
-        + nearest(name, [*FUNCTIONS, *ALIASES, "if", *known]),
+        hint=f"a product is written with *: {name}*(…)"
+        + (f"; or {close}" if close.startswith("did you mean") else ""),
     )

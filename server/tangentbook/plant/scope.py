@@ -15,6 +15,13 @@ if TYPE_CHECKING:
     from tangentbook.plant.source import PlantText
 
 
+_SPELLED = {
+    "π": "write pi",
+    "e": "e is an ordinary name; powers of the number e are written exp(…)",
+}
+"""What some undeclared names were meant to be."""
+
+
 def equation_place(text: PlantText, index: int) -> str:
     """How messages call an equation: by number and label."""
     label = text.equations[index].label
@@ -235,12 +242,25 @@ class Scope:
         }
         return sorted({name.rstrip("'") for name in names if name.endswith("'")})
 
+    def _meant_as_rate(self, name: str, known: list[str]) -> str:
+        """The quantity whose rate a name like dx or xdot was meant to be, "" for none."""
+        spelled = (f"d{name}", f"d{name}dt", f"d{name}_dt", f"{name}dot", f"{name}_dot")
+        if any(form in self.definitions for form in spelled):
+            return name
+        if name == "dt":
+            return "x"
+        base = name[1:] if name.startswith("d") else ""
+        return base if base in known or "dt" in self.first_seen else ""
+
     def undeclared(self, name: str, place: str) -> ExpressionError:
         """The error for a name that no declaration and no equation explains."""
         known = [*self.roles, *self.definitions, *self._primed()]
         hint = nearest(name, known)
-        if name.startswith("d") and name[1:] in known:
-            hint = f"a rate is written {name[1:]}' or d({name[1:]})/dt"
+        rate_of = self._meant_as_rate(name, known)
+        if rate_of:
+            hint = f"a rate is written {rate_of}' or d({rate_of})/dt"
+        elif name in _SPELLED:
+            hint = _SPELLED[name]
         elif name in FUNCTIONS:
             hint = f"{name} is a function: write {name}(…)"
         elif not hint.startswith("did you mean"):

@@ -65,6 +65,10 @@ def _names(names: Sequence[str], limit: int = 8) -> str:
     return shown + (f" and {len(names) - limit} more" if len(names) > limit else "")
 
 
+def _counted(count: int, what: str) -> str:
+    return f"{count or 'no'} {what}{'' if count == 1 else 's'}"
+
+
 def _check_presence(
     graph: Graph,
     equations: Sequence[Equation],
@@ -92,7 +96,8 @@ def _check_count(
         return
     rows = [[k for k, name in enumerate(unknowns) if name in row] for row in jacobian]
     matched = _matching(rows, len(unknowns))
-    count = f"{len(equations)} equations for {len(unknowns)} unknowns ({_names(unknowns)})"
+    count = f"{_counted(len(equations), 'equation')} for {_counted(len(unknowns), 'unknown')}"
+    count += f" ({_names(unknowns)})" if unknowns else ""
     if len(equations) < len(unknowns):
         taken = set(matched)
         free = [name for k, name in enumerate(unknowns) if k not in taken]

@@ -35,6 +35,7 @@ _PATTERN = re.compile(
     )""",
     re.VERBOSE,
 )
+_PRIMES = {"'": 1, "″": 2}
 _LETTERS = re.compile(r"\w+")
 _SAME = str.maketrans(
     {"−": "-", "·": "*", "⋅": "*", "×": "*", "÷": "/", "′": "'", "’": "'", "≤": "\x01", "≥": "\x02"}
@@ -55,7 +56,7 @@ def tokenize(text: str, where: str) -> list[Token]:
             hint="name parts of it in `definitions`",
         )
     # one character for one character, so that columns stay those of the given text
-    text = text.replace("″", "'").translate(_SAME)
+    text = text.translate(_SAME)
     tokens: list[Token] = []
     position = 0
     while True:
@@ -66,8 +67,11 @@ def tokenize(text: str, where: str) -> list[Token]:
         at = match.start(kind)
         token = _checked(text, where, kind, match.group(kind), at)
         position = match.end()
-        primes = _primes(text, position) if kind == "name" or token.text == ")" else 0
-        position += primes
+        primes = 0
+        if kind == "name" or token.text == ")":
+            while position < len(text) and text[position] in _PRIMES:
+                primes += _PRIMES[text[position]]
+                position += 1
         tokens.append(Token(token.kind, token.text, at, primes))
         _refuse_letters_behind_primes(text, where, tokens[-1], position)
     rest = text[position:]
@@ -78,19 +82,13 @@ def tokenize(text: str, where: str) -> list[Token]:
     return tokens
 
 
-def _primes(text: str, position: int) -> int:
-    count = 0
-    while position + count < len(text) and text[position + count] == "'":
-        count += 1
-    return count
-
-
 def _refuse_letters_behind_primes(text: str, where: str, token: Token, position: int) -> None:
     rest = _LETTERS.match(text, position) if token.primes else None
     if rest is not None:
         tail = rest.group()
         wrong = token.text + "'" * token.primes + tail
         base = token.text if token.kind == "name" else "X"
+        tail = tail.lstrip("_") or "1"
         raise ExpressionError(
             "expression.prime-inside-name",
             f"a prime is d/dt and ends a name; got {wrong}",
@@ -127,7 +125,7 @@ def _check_number(value: str, where: str, at: int) -> None:
             hint="write the number with the digits that are known, or use another unit",
         )
     power = int(exponent or 0)
-    decade = power + len(mantissa.partition(".")[0].lstrip("0"))
+    decade = power + len(mantissa.partition(".")[0].lstrip("0")) - 1
     if abs(power) > MAX_DECADE + MAX_DIGITS or abs(decade) > MAX_DECADE:
         raise ExpressionError(
             "expression.number",
@@ -140,6 +138,7 @@ def _check_number(value: str, where: str, at: int) -> None:
 
 _ADVICE = {
     "'": "a prime follows a name or a closing bracket directly, as theta' or (m*V)'",
+    "″": "a prime follows a name or a closing bracket directly, as theta'' or (m*V)''",
     "²": "write a power as ^2",
     "³": "write a power as ^3",
     "√": "write sqrt(…)",
