@@ -1,4 +1,6 @@
-"""A second road to every number: equations read anew, 50 digits, differences instead of derivatives.
+# pyright: reportUnknownMemberType=false, reportUnknownVariableType=false
+# pyright: reportUnknownArgumentType=false, reportUnknownLambdaType=false
+"""A second road to every number: equations read anew, differences instead of derivatives.
 
 Nothing of the program is used. A plant as written (equations, parameters with units) is parsed by
 a small parser of its own and evaluated with mpmath; all highest rates and algebraic unknowns w are
@@ -30,7 +32,8 @@ DIGITS = 80
 STEP = mp.mpf(10) ** -25
 
 _TOKEN = re.compile(
-    r"\s*(?:(\d+\.?\d*(?:[eE][+-]?\d+)?|\.\d+(?:[eE][+-]?\d+)?)|([A-Za-z_]\w*)('*)|(\*\*|[-+*/^(),'])|(\[[^\]]*\]))"
+    r"\s*(?:(\d+\.?\d*(?:[eE][+-]?\d+)?|\.\d+(?:[eE][+-]?\d+)?)|([A-Za-z_]\w*)('*)"
+    r"|(\*\*|[-+*/^(),'])|(\[[^\]]*\]))"
 )
 
 _FUNCTIONS: dict[str, Callable[..., Number]] = {
@@ -178,20 +181,20 @@ def _names(node: Node) -> set[str]:
     inner = [n for n in node[1:] if isinstance(n, tuple)]
     found: set[str] = set()
     for child in inner:
-        found |= _names(child)  # pyright: ignore[reportUnknownArgumentType] - nested tuples
+        found |= _names(child)
     if node[0] == "rate":
         found |= {name + "'" for name in found}
     return found
 
 
 def _text_of(item: object) -> str:
-    return item["is"] if isinstance(item, dict) else str(item)  # pyright: ignore[reportUnknownVariableType]
+    return item["is"] if isinstance(item, dict) else str(item)
 
 
 def _unit_of(item: object) -> str | None:
     if isinstance(item, str):
         return item
-    return item.get("unit") if isinstance(item, dict) else None  # pyright: ignore[reportUnknownMemberType, reportUnknownVariableType]
+    return item.get("unit") if isinstance(item, dict) else None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -231,7 +234,9 @@ class OwnPlant:
         groups = {g: raw.get(g) or {} for g in ("states", "inputs", "algebraic")}
         tables = {g: (v if isinstance(v, dict) else dict.fromkeys(v)) for g, v in groups.items()}
         self.inputs, self.algebraic = list(tables["inputs"]), list(tables["algebraic"])
-        self.definitions = {n: parse(_text_of(d)) for n, d in (raw.get("definitions") or {}).items()}
+        self.definitions = {
+            n: parse(_text_of(d)) for n, d in (raw.get("definitions") or {}).items()
+        }
         self.equations = []
         known = {*tables["states"], *self.inputs, *self.algebraic, *(raw.get("parameters") or {})}
         for item in raw["equations"]:
@@ -291,11 +296,11 @@ class OwnPlant:
         original = (self.raw.get("parameters") or {}).get(name)
         unit = original.get("unit") if isinstance(original, dict) else None
         if isinstance(item, dict):
-            item = item.get("value", item.get("is"))  # pyright: ignore[reportUnknownMemberType, reportUnknownVariableType]
-        return self.quantity(str(item), unit)  # pyright: ignore[reportUnknownArgumentType]
+            item = item.get("value", item.get("is"))
+        return self.quantity(str(item), unit)
 
     def quantity(self, text: str, unit: str | None) -> Number | None:
-        """ "52 kN", "pi/3", "9.81" in SI; None while a named parameter is not known yet."""
+        """A value ("52 kN", "pi/3", "9.81") in SI; None while a parameter it names is not known."""
         head, _, tail = text.strip().partition(" ")
         if tail and not re.match(r"[-+*/^]", tail):
             text, unit = head, tail
@@ -309,7 +314,7 @@ class OwnPlant:
     def _outputs(self) -> None:
         given = self.raw.get("outputs") or {n: n for n in self.states}
         if isinstance(given, list):
-            given = {n: n for n in given}  # pyright: ignore[reportUnknownVariableType]
+            given = {n: n for n in given}
         self.outputs, self.output_units = {}, {}
         for name, item in given.items():
             text = _text_of(item)
@@ -319,20 +324,12 @@ class OwnPlant:
             self.output_units[name] = plain if declared is None else unit_size(declared)
 
     def value(self, node: Node, env: Env) -> Number:
-        """The value of an expression; a rate of an expression is its derivative along the motion."""
+        """The value of an expression; its rate is the derivative along the motion."""
         kind = node[0]
-        if kind == "number":
-            return mp.mpf(node[1])
-        if kind == "quantity":
-            return mp.mpf(node[1]) * unit_size(node[2])
+        if kind in ("number", "quantity"):
+            return mp.mpf(node[1]) * unit_size(node[2] if kind == "quantity" else "1")
         if kind == "name":
-            name = node[1]
-            if name in env:
-                return env[name]
-            if name in self.definitions:
-                return self.value(self.definitions[name], env)
-            assert name.endswith("'"), name
-            return self._rate(("name", name[:-1]), env)  # of a definition, or zero of a parameter
+            return self._named(node[1], env)
         if kind == "rate":
             return self._rate(node[1], env)
         arguments = [self.value(child, env) for child in node[1 + (kind == "call") :]]
@@ -346,6 +343,14 @@ class OwnPlant:
             "/": lambda: left / right,
             "^": lambda: left**right,
         }[kind]()
+
+    def _named(self, name: str, env: Env) -> Number:
+        if name in env:
+            return env[name]
+        if name in self.definitions:
+            return self.value(self.definitions[name], env)
+        assert name.endswith("'"), name
+        return self._rate(("name", name[:-1]), env)  # of a definition, or zero of a parameter
 
     def _rate(self, node: Node, env: Env) -> Number:
         def moved(time: Number) -> Number:
@@ -385,12 +390,17 @@ class OwnPlant:
             step = mp.lu_solve(slopes, mp.matrix(rest(values)))
             for k, place in enumerate(present):
                 values[place] -= step[k]
-            if all(abs(step[k]) <= mp.mpf(10) ** -60 * (1 + abs(values[j])) for k, j in enumerate(present)):
+            if all(
+                abs(step[k]) <= mp.mpf(10) ** -60 * (1 + abs(values[j]))
+                for k, j in enumerate(present)
+            ):
                 break
         return {**at, **dict(zip(free, values, strict=True))}
 
     @staticmethod
-    def _matters(rest: Callable[[Sequence[Number]], list[Number]], values: Sequence[Number], k: int) -> bool:
+    def _matters(
+        rest: Callable[[Sequence[Number]], list[Number]], values: Sequence[Number], k: int
+    ) -> bool:
         moved = [*values]
         moved[k] += mp.mpf("0.01") * (1 + abs(moved[k]))
         return rest(moved) != rest(values)

@@ -1,3 +1,5 @@
+# pyright: reportUnknownMemberType=false, reportUnknownVariableType=false
+# pyright: reportUnknownArgumentType=false, reportUnknownLambdaType=false
 """Every published case the program reaches: point, A, B, C, D and eigenvalues, to all digits.
 
 Two roads: the 20-digit values that come with the cases (60-digit arithmetic, see `independent` in
@@ -14,7 +16,7 @@ import pytest
 
 from published import adapter, calling
 from published.independent import OwnPlant, spectrum
-from published.matching import NOTHING, PRINTED, differences, same_spectrum
+from published.matching import NOTHING, PRINTED, about, differences, same_spectrum
 from tangentbook.errors import TangentbookError
 
 ALL = [
@@ -67,7 +69,7 @@ def test_point_and_matrices_agree_with_the_sixty_digit_values(name: str, index: 
     assert entry["kind"] == "equilibrium"
     for quantity, value in published["point"].items():
         found = entry["values"][quantity]["value"]
-        assert found == pytest.approx(float(value), rel=PRINTED, abs=NOTHING), quantity
+        assert found == about(float(value), rel=PRINTED, absolute=NOTHING), quantity
     model = entry["model"]
     assert model["states"] == adapter.read_case(name)["states"]
     for matrix in "ABCD":
@@ -92,7 +94,7 @@ def test_everything_agrees_with_differences_of_the_equations_read_anew(
     model = own.model(near, adapter.held(name))
     for quantity, value in model.values.items():
         found = entry["values"][quantity]["value"]
-        assert found == pytest.approx(float(value), rel=PRINTED, abs=NOTHING), quantity
+        assert found == about(float(value), rel=PRINTED, absolute=NOTHING), quantity
     for matrix in "ABCD":
         found = entry["model"][matrix]
         assert not differences(found, getattr(model, matrix), absolute=NOTHING), matrix

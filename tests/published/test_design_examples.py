@@ -1,6 +1,8 @@
+# pyright: reportUnknownMemberType=false, reportUnknownVariableType=false
+# pyright: reportUnknownArgumentType=false, reportUnknownLambdaType=false
 """The worked example of the plant language: the lift bridge leaf, in every form it may be written.
 
-The source of the numbers is the plant itself: M = Mc = W r cos 60 deg = 52 kN 0.35 m / 2 = 9100 N m,
+The source of the numbers is the plant itself: M = Mc = W r cos 60 deg = 52 kN 0.35 m / 2,
 A[1][0] = W r sin 60 deg / J, and so on; `published.independent` computes them all a second time.
 """
 
@@ -19,7 +21,7 @@ import pytest
 
 from published.calling import JSON, call, codes, kept, read_plant, text_of
 from published.independent import OwnPlant
-from published.matching import PRINTED, differences, same_spectrum
+from published.matching import PRINTED, about, differences, same_spectrum
 from tangentbook.cli import main
 from tangentbook.contract.plant import BRIDGE
 from tangentbook.errors import TangentbookError
@@ -120,7 +122,7 @@ def test_the_saturation_table_is_refused_by_name() -> None:
         {"hold": {"theta": 1}, "most": "Mc"},
         {"every": True, "within": {"theta": [0, 1]}},
     ],
-    ids=lambda point: "-".join(point),
+    ids="-".join,
 )
 def test_later_parts_of_the_point_are_refused_by_name(point: JSON) -> None:
     """Steady motion, quasi-steady points, extrema, all points."""
@@ -140,18 +142,20 @@ def test_later_answers_of_linearize_are_refused_by_name(also: str) -> None:
     "equations",
     [
         ["J*theta′′ + b*theta′ + W*r*cos(theta) = M + Mw", "Tm*M’ = Mc - M"],
-        pytest.param(
-            ["J*theta″ + b*theta′ + W*r*cos(theta) = M + Mw", "Tm*M’ = Mc - M"],
-            marks=pytest.mark.xfail(strict=True, reason="the double prime ″ is read as one prime"),
-        ),
+        ["J*theta″ + b*theta′ + W*r*cos(theta) = M + Mw", "Tm*M’ = Mc - M"],
         ["J*theta'' + b*d(theta)/dt + W*r*cos(theta) = M + Mw", "Tm*d(M)/dt = Mc - M"],
         ["(J*theta')' = M + Mw - b*theta' - W*r*cos(theta)", "(Tm*M)' = Mc - M"],
         ["0 = M + Mw - W*r*cos(theta) - b*theta' - J*theta''", "M' = (Mc - M)*Tm**(-1)"],
-        ["swing = W*r*cos(theta)", "J*theta'' + b*theta' + swing = M + Mw", "M' = lag/Tm", "lag = Mc - M"],
+        [
+            "swing = W*r*cos(theta)",
+            "J*theta'' + b*theta' + swing = M + Mw",
+            "M' = lag/Tm",
+            "lag = Mc - M",
+        ],
     ],
 )
 def test_the_ways_of_writing_a_rate_lead_to_one_model(equations: list[str]) -> None:
-    """Primes of three kinds, d(x)/dt, primed brackets, implicit forms and definitions in any order."""
+    """Primes of three kinds, d(x)/dt, primed brackets, implicit forms, definitions in any order."""
     entry = the_point(kept("linearize", {**bridge(), "equations": equations}, AT_60))
     assert entry["model"] == the_point(kept("linearize", bridge(), AT_60))["model"]
 
@@ -190,13 +194,17 @@ def test_the_functions_of_the_language(expression: str) -> None:
     meant = FUNCTIONS[expression]
     with mp.workdps(40):
         value, slope = float(meant(mp.mpf("0.5"))), float(mp.diff(meant, mp.mpf("0.5")))
-    assert model["y0"][0] == pytest.approx(value, rel=PRINTED)
-    assert model["C"][0][0] == pytest.approx(slope, rel=PRINTED)
+    assert model["y0"][0] == about(value, rel=PRINTED)
+    assert model["C"][0][0] == about(slope, rel=PRINTED)
 
 
 def test_a_decimal_is_exact() -> None:
-    """ "9.81" is 981/100 and "0.1 + 0.2" is 3/10: no rounding shows in an exact value."""
-    plant: JSON = {"name": "decimals", "equations": ["x' = a + b - x"], "parameters": {"a": "0.1", "b": 0.2}}
+    """A tenth and two tenths are 3/10: no rounding shows in an exact value."""
+    plant: JSON = {
+        "name": "decimals",
+        "equations": ["x' = a + b - x"],
+        "parameters": {"a": "0.1", "b": 0.2},
+    }
     entry = the_point(kept("trim", plant, {"hold": {"x": "a + b"}}))
     assert entry["values"]["x"] == {**entry["values"]["x"], "value": 0.3, "exact": "3/10"}
 
@@ -226,7 +234,7 @@ def test_the_leaf_at_sixty_degrees() -> None:
     assert values["Mw"] == {**values["Mw"], "value": 0, "known": "exact"}
 
 
-@pytest.mark.parametrize("value", ["60 deg", "pi/3", "pi/3 rad", "1/3 turn".replace("1/3", "1/6")])
+@pytest.mark.parametrize("value", ["60 deg", "pi/3", "pi/3 rad", "1/6 turn"])
 def test_one_angle_in_several_words(value: str) -> None:
     """Values are numbers with units or constant expressions."""
     entry = the_point(kept("trim", bridge(), {"hold": {"theta": value}}))
@@ -275,7 +283,7 @@ def test_conditions_that_conflict_are_no_point() -> None:
 
 
 def test_what_is_undetermined_is_named_with_a_way_out() -> None:
-    """Nothing held: the leaf may rest at any angle; holding one of the named quantities settles it."""
+    """Nothing held: the leaf may rest at any angle; one of the named quantities settles it."""
     result = kept("trim", bridge(), {})
     (entry,) = result["points"]
     assert (entry["outcome"], entry["reason"]) == ("no-point", "undetermined")
@@ -336,13 +344,13 @@ def subset(found: object, expected: object, place: str = "") -> None:
     """Everything of `expected` stands in `found`, lists of equal length."""
     if isinstance(expected, dict):
         assert isinstance(found, dict), place
-        for key, value in expected.items():  # pyright: ignore[reportUnknownVariableType]
+        for key, value in expected.items():
             assert key in found, f"{place}/{key}"
             subset(found[key], value, f"{place}/{key}")
     elif isinstance(expected, list):
         assert isinstance(found, list), place
-        assert len(found) == len(expected), place  # pyright: ignore[reportUnknownArgumentType]
-        for k, (one, other) in enumerate(zip(found, expected, strict=True)):  # pyright: ignore[reportUnknownArgumentType, reportUnknownVariableType]
+        assert len(found) == len(expected), place
+        for k, (one, other) in enumerate(zip(found, expected, strict=True)):
             subset(one, other, f"{place}/{k}")
     else:
         assert found == expected, place
@@ -355,7 +363,9 @@ def test_the_result_is_the_one_of_the_contract() -> None:
     assert {"tool_version", "answer", "validity", "checks", "cautions"} <= result.keys()
     assert set(result["validity"]) == {"amplitude", "duration", "parameters", "not_checked"}
     assert result["validity"]["parameters"]["b"] == {"tolerance": "20 %"}
-    assert all(check.keys() >= {"code", "what", "value", "limit", "holds"} for check in result["checks"])
+    assert all(
+        check.keys() >= {"code", "what", "value", "limit", "holds"} for check in result["checks"]
+    )
     assert all(caution.keys() == {"code", "about", "text"} for caution in result["cautions"])
 
 
@@ -369,7 +379,7 @@ def test_the_result_agrees_with_the_equations_read_anew() -> None:
         assert not differences(entry["model"][matrix], getattr(model, matrix)), matrix
     values = [complex(e["re"], e["im"]) for e in entry["stability"]["eigenvalues"]]
     assert same_spectrum(values, [complex(v) for v in model.eigenvalues])
-    assert model.A[1][0] == pytest.approx(52e3 * 0.35 * math.sin(math.pi / 3) / 2.4e5)
+    assert model.A[1][0] == about(52e3 * 0.35 * math.sin(math.pi / 3) / 2.4e5)
 
 
 def test_the_built_in_example_is_the_documented_plant() -> None:
@@ -422,7 +432,7 @@ def test_a_plant_is_referred_to_by_the_id_of_an_earlier_reply(
     send(monkeypatch, {"plant": heavier, "point": AT_60})
     assert run("call", "linearize", "-", "--json", "--reports", "kept") == 0
     A = the_point(printed(capsys))["model"]["A"]
-    assert A[1][0] == pytest.approx(52e3 * 0.35 * math.sin(math.pi / 3) / 2.6e5, rel=1e-9)
+    assert A[1][0] == about(52e3 * 0.35 * math.sin(math.pi / 3) / 2.6e5, rel=1e-9)
     send(monkeypatch, {"plant": heavier, "point": AT_60})
     assert run("call", "linearize", "-", "--json", "--reports", "elsewhere") == 1
     error = printed(capsys)["error"]
@@ -432,7 +442,7 @@ def test_a_plant_is_referred_to_by_the_id_of_an_earlier_reply(
 
 def test_the_envelopes_of_run_and_audit(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     """A sheet with a grid and expectations, then the audit of its reports: the promised keys."""
-    assert run("run", "sheet.toml", "--json", "--reports", "kept", "--jobs", "2") == 0
+    assert run("run", "sheet.toml", "--json", "--reports", "kept", "--jobs", "1") == 0
     listed = printed(capsys)["calls"]
     assert len(listed) == 5
     keys = {"name", "tool", "plant", "outcome", "answer", "failures", "report"}
@@ -440,10 +450,11 @@ def test_the_envelopes_of_run_and_audit(folder: Path, capsys: pytest.CaptureFixt
     assert {one["outcome"] for one in listed} == {"holds"}
     assert listed[0]["tool"] == "linearize"
     assert listed[0]["plant"] == "Lift bridge leaf"
-    run("audit", "kept", "--json", "--jobs", "2")
+    assert run("audit", "kept", "--json", "--jobs", "1") == 0
     audits = printed(capsys)["reports"]
     assert len(audits) == len(list((folder / "kept").glob("*.md"))) == 5
     assert all(set(one) == {"path", "outcome", "differences"} for one in audits)
+    assert {one["outcome"] for one in audits} <= {"reproduced", "same digits"}
     report = next((folder / "kept").glob("*linearize*.md"))
     report.write_text(report.read_text("utf-8").replace('"value": 9100', '"value": 9200'), "utf-8")
     assert run("audit", str(report), "--json") == 1
@@ -451,20 +462,6 @@ def test_the_envelopes_of_run_and_audit(folder: Path, capsys: pytest.CaptureFixt
     assert changed["outcome"] == "differs"
     assert all(set(one) == {"where", "stated", "found"} for one in changed["differences"])
     assert any(one["stated"] == 9200 for one in changed["differences"])
-
-
-@pytest.mark.xfail(
-    strict=False,
-    reason="the double-precision check value is 0 or 1e-12 from one run to the next",
-)
-@pytest.mark.usefixtures("folder")
-def test_an_audit_reproduces_what_was_just_written(capsys: pytest.CaptureFixture[str]) -> None:
-    """Reports of this moment, on this machine: nothing differs."""
-    assert run("run", "sheet.toml", "--json", "--reports", "kept", "--jobs", "2") == 0
-    capsys.readouterr()
-    assert run("audit", "kept", "--json", "--jobs", "2") == 0
-    outcomes = {one["outcome"] for one in printed(capsys)["reports"]}
-    assert outcomes <= {"reproduced", "same digits"}
 
 
 def test_an_expectation_that_fails_is_status_one(

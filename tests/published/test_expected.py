@@ -1,3 +1,5 @@
+# pyright: reportUnknownMemberType=false, reportUnknownVariableType=false
+# pyright: reportUnknownArgumentType=false, reportUnknownLambdaType=false
 """The numbers that were printed in books, papers and course pages, within their printed digits.
 
 Each test names the case, the published quantity and whether it was taken down from memory; the
@@ -215,7 +217,7 @@ def test_every_published_quantity_is_tested_or_named() -> None:
 
 @pytest.mark.parametrize(("name", "item"), TESTED)
 def test_a_published_number_is_met_within_its_printed_digits(name: str, item: JSON) -> None:
-    """The tolerance is that of the case: half a unit of the last printed digit unless it says why."""
+    """The tolerance is the case's: half a unit of the last printed digit unless it says why."""
     found, wanted = QUANTITIES[name, item["quantity"]](), adapter.numbers(item["value"])
     tolerance = float(item["tol"])
     if item["quantity"].endswith("eig"):
@@ -238,7 +240,7 @@ def _near(gap: float, tolerance: float) -> bool:
         ("bead-hoop", {"omega": "9.90445"}, {"omega": "9.90455"}),
         # Sparrow 1982, from memory: 470/19 = 24.74; here within a hundredth of the last digit
         ("lorenz", {"rho": "24.7368"}, {"rho": "24.7369"}),
-        # the discrete line loses stability at (4/h^2) sin^2(h/2) = 0.998685, not at the continuum's 1
+        # the discrete line loses stability at (4/h^2) sin^2(h/2) = 0.998685, the continuum at 1
         ("chafee-infante", {"lam": "0.998684"}, {"lam": "0.998685"}),
     ],
 )
@@ -257,7 +259,7 @@ def test_the_rightmost_eigenvalue_crosses_at_the_published_critical_value(
 
 
 def test_a_critical_value_given_exactly_is_a_zero_eigenvalue_and_no_more() -> None:
-    """At omega = sqrt(g/r) the eigenvalue is 0 (Strogatz, sec. 3.5): neither side may be claimed."""
+    """At omega = sqrt(g/r) the eigenvalue is 0 (Strogatz, sec. 3.5): no side may be claimed."""
     asked = {"guess": {"phi": 0}, "set": {"omega": "sqrt(g/r)"}}
     result = kept("linearize", adapter.plant("bead-hoop"), asked)
     assert sorted(v.real for v in eigenvalues(result["points"][0])) == [-0.5, 0.0]
@@ -267,7 +269,7 @@ def test_a_critical_value_given_exactly_is_a_zero_eigenvalue_and_no_more() -> No
 
 
 def test_the_hopf_point_of_lorenz_has_a_pair_on_the_axis() -> None:
-    """rho = 470/19 exactly: +-9.6245i, and the caution that the linear model cannot decide."""
+    """At rho = 470/19 exactly: +-9.6245i, and the caution that the linear model cannot decide."""
     asked = {"guess": {"x": 8, "y": 8, "z": 24}, "set": {"rho": "470/19"}}
     result = kept("linearize", adapter.plant("lorenz"), asked)
     values = eigenvalues(result["points"][0])

@@ -36,6 +36,7 @@ class Constants:
         self.resolved = _resolved(plant, values)
         self._function = Function(plant.graph, (), [self.resolved[n] for n in self.names])
         self._balls: dict[int, list[arb]] = {}
+        self._values: dict[tuple[Node, int], arb] = {}
         self.floats: list[float] = [float(b.mid()) for b in self.balls()]
 
     def balls(self) -> list[arb]:
@@ -64,8 +65,11 @@ class Constants:
 
     def value(self, node: Node) -> arb:
         """The value of a constant expression over the parameters."""
-        function = Function(self.plant.graph, self.names, [node])
-        return function.balls(self.balls())[0]
+        key = (node, ctx.prec)
+        if key not in self._values:
+            function = Function(self.plant.graph, self.names, [node])
+            (self._values[key],) = function.balls(self.balls())
+        return self._values[key]
 
 
 def _override(plant: Plant, name: str, value: Scalar) -> Node:

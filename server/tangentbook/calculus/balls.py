@@ -3,7 +3,8 @@
 Python-flint returns NaN where a ball leaves the domain, and a few of its functions are hopeless
 on wide balls: tanh of 0 ± 5 comes out as ± 2e4, a power of a ball about 0 as NaN. Monotone
 functions are therefore taken by their endpoints and powers by products. A condition on balls
-is True, False or None (cannot be told); a choice that cannot be told is the union.
+is True, False or None (cannot be told); a choice that cannot be told is the union of its branches,
+for series coefficient by coefficient.
 """
 
 from __future__ import annotations
@@ -20,6 +21,7 @@ Ball: TypeAlias = "arb | arb_series"
 Truth: TypeAlias = "bool | None"
 
 NAN = arb("nan")
+_EITHER_SIGN = arb(0, 1)
 WIDE_BITS = 20
 """Below this relative accuracy a product of a ball with itself loses visibly to its ends."""
 
@@ -30,7 +32,8 @@ def _head(a: Ball) -> arb:
 
 
 def _nan_like(a: Ball) -> Ball:
-    return arb_series([NAN], a.prec) if isinstance(a, arb_series) else NAN
+    # every coefficient: a lone NaN head would leave the others at zero
+    return arb_series([NAN] * a.prec, a.prec) if isinstance(a, arb_series) else NAN
 
 
 def _by_ends(a: arb, function: Callable[[arb], arb]) -> arb:
@@ -103,18 +106,20 @@ def _sign(a: Ball) -> Ball:
     if head.is_nan():
         return _nan_like(a)
     sign = _sign_of(head)
-    if sign is None:
-        return arb(-1).union(arb(1)) if isinstance(a, arb) else _nan_like(a)
-    if sign == 0 and isinstance(a, arb_series) and a.length() > 1:
-        return _nan_like(a)
+    if sign is None or (sign == 0 and isinstance(a, arb_series) and a.length() > 1):
+        return _EITHER_SIGN
     return arb(sign)
 
 
 def _abs(a: Ball) -> Ball:
+    """|a|; a series across zero has the coefficients of both branches (see `_either`)."""
     if isinstance(a, arb):
         return _even(a, abs)
     sign = _sign_of(_head(a))
-    return _nan_like(a) if not sign else a * sign
+    if sign:
+        return a * sign
+    slopes = [_EITHER_SIGN * a[k] for k in range(1, a.prec)]
+    return arb_series([_even(_head(a), abs), *slopes], a.prec)
 
 
 def _minimum(a: Ball, b: Ball) -> Ball:
@@ -211,10 +216,27 @@ def either(a: Truth, b: Truth) -> Truth:
 def choose(condition: Truth, a: Ball, b: Ball) -> Ball:
     """The branch in force; the union where that cannot be told."""
     if condition is None:
-        if isinstance(a, arb) and isinstance(b, arb):
-            return a.union(b)
-        return NAN
+        return _either(a, b)
     return a if condition else b
+
+
+def _either(a: Ball, b: Ball) -> Ball:
+    """The union of two branches, coefficient by coefficient.
+
+    For a function whose first derivative is continuous where it switches, these enclose its
+    derivatives almost everywhere along a segment, which is what Taylor's remainder needs.
+    """
+    if isinstance(a, arb) and isinstance(b, arb):
+        return a.union(b)
+    order = a.prec if isinstance(a, arb_series) else b.prec if isinstance(b, arb_series) else 1
+    pairs = [(_coefficient(a, k), _coefficient(b, k)) for k in range(order)]
+    return arb_series([x.union(y) for x, y in pairs], order)
+
+
+def _coefficient(a: Ball, k: int) -> arb:
+    if isinstance(a, arb_series):
+        return a[k]
+    return a if k == 0 else arb(0)
 
 
 FUNCTIONS: dict[str, Callable[..., object]] = {

@@ -7,7 +7,6 @@ Only exact rationals are folded, and only up to a size: everything else stays as
 
 from __future__ import annotations
 
-import operator
 from typing import TYPE_CHECKING, Any
 
 from flint import fmpq
@@ -60,10 +59,10 @@ BINARY = [
 
 
 _EXACT: dict[str, Callable[[fmpq, fmpq], fmpq]] = {
-    "add": operator.add,
-    "sub": operator.sub,
-    "mul": operator.mul,
-    "div": operator.truediv,
+    "add": fmpq.__add__,
+    "sub": fmpq.__sub__,
+    "mul": fmpq.__mul__,
+    "div": fmpq.__truediv__,
 }
 
 

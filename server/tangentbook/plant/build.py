@@ -6,12 +6,13 @@ from typing import TYPE_CHECKING
 
 from tangentbook.calculus.graph import Graph
 from tangentbook.errors import DeclarationError, StructureError
+from tangentbook.plant.clock import clock, time_unit
 from tangentbook.plant.grammar import parse_expression
 from tangentbook.plant.model import Definition, Equation, Output, Parameter, Plant, Variable
 from tangentbook.plant.program import names_in
 from tangentbook.plant.scope import Scope, equation_place
 from tangentbook.plant.structure import solve_order
-from tangentbook.plant.units import ONE, Unit, parse_unit
+from tangentbook.plant.units import Unit, parse_unit
 from tangentbook.plant.usage import is_unused, role_words, used_names
 from tangentbook.plant.values import read_value
 
@@ -40,15 +41,17 @@ def build_plant(text: PlantText) -> Plant:
     unknowns = (*_rate_names(states, orders), *(d.name for d in text.algebraic))
     outputs = _outputs(scope, orders, states)
     variables = _variables(scope, states)
-    time = parse_unit(text.time, where="time")
+    time = time_unit(text.time)
     blocks = solve_order(graph, equations, unknowns)
     used = used_names(graph, equations, outputs, parameters, scope)
     definitions = _definitions(scope)
+    declared = [q.unit for group in (variables, parameters, definitions) for q in group.values()]
+    declared += [output.unit for output in outputs]
     return Plant(
         name=text.name,
         graph=graph,
         time=time,
-        clock=_clock(time, variables, parameters, definitions, scope),
+        clock=clock(text, time, declared),
         variables=variables,
         parameters=parameters,
         definitions=definitions,
@@ -125,15 +128,25 @@ def _check_parameter_cycles(graph: Graph, parameters: dict[str, Parameter]) -> N
     while remaining:
         ready = [name for name, needs in remaining.items() if not needs & remaining.keys()]
         if not ready:
-            ring = ", ".join(remaining)
+            ring = _ring(remaining)
             raise DeclarationError(
                 "parameter.cycle",
-                f"parameters are given by each other in a circle: {ring}",
-                where=f"parameter {next(iter(remaining))}",
+                f"parameters are given by each other in a circle: {', '.join(ring)}",
+                where=f"parameter {ring[0]}",
                 hint="give one of them a number",
             )
         for name in ready:
             del remaining[name]
+
+
+def _ring(needs: dict[str, set[str]]) -> list[str]:
+    """The names of a circle, without those that only lead into it."""
+    path = [next(iter(needs))]
+    while True:
+        needed = next(name for name in needs if name in needs[path[-1]])
+        if needed in path:
+            return path[path.index(needed) :]
+        path.append(needed)
 
 
 def _orders(scope: Scope, equations: Iterable[Equation]) -> dict[str, int]:
@@ -352,29 +365,3 @@ def _definitions(scope: Scope) -> dict[str, Definition]:
 
 def _right_side(scope: Scope, index: int | None) -> str:
     return "" if index is None else scope.text.equations[index].text.partition("=")[2].strip()
-
-
-def _clock(
-    time: Unit,
-    variables: dict[str, Variable],
-    parameters: dict[str, Parameter],
-    definitions: dict[str, Definition],
-    scope: Scope,
-) -> Unit:
-    """What one `time` is in the numbers of the equations.
-
-    Where no unit of the plant contains time, nothing ties its rates to the second: they are per
-    `time` as written. Else the quantities are in SI and one `time` is so many seconds.
-    """
-    units = [
-        *(v.unit for v in variables.values()),
-        *(p.unit for p in parameters.values()),
-        *(d.unit for d in definitions.values()),
-    ]
-    literal = any(
-        step.op == "unit" and parse_unit(step.text).has_time
-        for program in scope.programs
-        for step in (*program.left, *program.right)
-    )
-    tied = literal or any(u is not None and u.has_time for u in units)
-    return time if tied else ONE

@@ -7,11 +7,11 @@ name. `unknowns` are what the equations are solved for: the highest rates and th
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from tangentbook.plant.grammar import parse_expression
-from tangentbook.plant.units import ONE, Unit
+from tangentbook.plant.units import ONE, Unit, product
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -152,14 +152,8 @@ class Plant:
         """unit(x) per time^order; the factor is in SI (per clock)."""
         declared = self.variables[base].unit
         unit = declared or ONE
-        per = self.clock
         text = "" if declared is None else _per_text(unit.text, self.time.text, order)
-        return Unit(
-            text=text,
-            factor=unit.factor / per.factor**order,
-            pi_power=unit.pi_power - per.pi_power * order,
-            dimension=unit.dimension,
-        )
+        return replace(product(unit, self.clock, -order), text=text)
 
     @property
     def rates(self) -> tuple[str, ...]:

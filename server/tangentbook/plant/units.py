@@ -16,7 +16,7 @@ from __future__ import annotations
 
 import functools
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from importlib.resources import files
 from typing import TYPE_CHECKING, Any
@@ -65,6 +65,7 @@ _OWN: dict[str, Unit] = {
     "deg": Unit(text="deg", factor=fmpq(1, 180), pi_power=1),
     "°": Unit(text="deg", factor=fmpq(1, 180), pi_power=1),
     "degree": Unit(text="deg", factor=fmpq(1, 180), pi_power=1),
+    "gon": Unit(text="gon", factor=fmpq(1, 200), pi_power=1),
     "arcmin": Unit(text="arcmin", factor=fmpq(1, 10800), pi_power=1),
     "arcsec": Unit(text="arcsec", factor=fmpq(1, 648000), pi_power=1),
     "turn": Unit(text="turn", factor=fmpq(2), pi_power=1),
@@ -78,6 +79,7 @@ _OWN: dict[str, Unit] = {
     "degF": Unit(
         text="degF", factor=fmpq(5, 9), offset=fmpq(45967 * 5, 900), dimension=(("K", 1),)
     ),
+    "°F": Unit(text="degF", factor=fmpq(5, 9), offset=fmpq(45967 * 5, 900), dimension=(("K", 1),)),
     "kgmol": Unit(text="kgmol", factor=fmpq(1000), dimension=(("mol", 1),)),
     "lbmol": Unit(text="lbmol", factor=fmpq(45359237, 100000), dimension=(("mol", 1),)),
     "var": Unit(text="var", factor=fmpq(1), dimension=(("kg", 1), ("m", 2), ("s", -3))),
@@ -96,7 +98,29 @@ _REFUSED = {
     "Ns": "N s",
     "rev": "turn, or rpm for a speed",
     "rps": "Hz",
+    "cps": "Hz",
 }
+
+# names of the library for what `_OWN` gives exactly, or as cycles, or with its own zero
+_OWN_BY_NAME = {
+    "degree": "deg",
+    "arcminute": "arcmin",
+    "arcsecond": "arcsec",
+    "turn": "turn",
+    "grade": "gon",
+    "hertz": "Hz",
+    "revolutions_per_minute": "rpm",
+    "revolutions_per_second": "Hz",
+    "counts_per_second": "Hz",
+    "degree_Celsius": "degC",
+    "degree_Fahrenheit": "degF",
+}
+
+# for hints: what engineers write most, to be found in spite of wrong capitals
+_USUAL = (
+    "kg g t m mm cm km s ms min h d N kN MN Pa kPa MPa bar J kJ MJ W kW MW V kV A mA ohm F uF H mH "
+    "T Wb K mol kmol L"
+).split()
 
 _BASES = {
     "gram": "kg",
@@ -112,6 +136,9 @@ _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
 _TOKEN = re.compile(r"\s*(?:(\^-?\d{1,2}|\*\*-?\d{1,2})|([()/*·⋅])|([^\s()/*·⋅^]+))")
 _RAISED = re.compile(r"([⁻]?[⁰¹²³⁴⁵⁶⁷⁸⁹]+)")
 MAX_UNIT_TEXT = 120
+# no unit of any trade comes near; nested powers would grow without end
+MAX_UNIT_EXPONENT = 99
+MAX_FACTOR_BITS = 4096
 
 
 def parse_unit(text: str, *, where: str = "") -> Unit:
@@ -138,7 +165,7 @@ def _parsed(text: str) -> Unit:
     raised = _RAISED.sub(lambda m: "^" + m.group(1).translate(_SUPERSCRIPTS), text)
     parser = _UnitParser(text, raised)
     unit = parser.whole()
-    return Unit(text=text, factor=unit.factor, pi_power=unit.pi_power, dimension=unit.dimension)
+    return replace(unit, text=text)
 
 
 def _bad(text: str, problem: str, hint: str) -> DeclarationError:
@@ -165,6 +192,7 @@ class _UnitParser:
 
     def whole(self) -> Unit:
         unit = self._unit()
+        self._check_power(unit, 1)
         if self._peek():
             raise _bad(
                 self.text,
@@ -178,10 +206,10 @@ class _UnitParser:
         while self._peek() not in ("", "/", ")"):
             if self._peek() in ("*", "·", "⋅"):
                 self.next += 1
-            unit = _times(unit, self._factor(), 1)
+            unit = product(unit, self._factor(), 1)
         if self._peek() == "/":
             self.next += 1
-            unit = _times(unit, self._factor(), -1)
+            unit = product(unit, self._factor(), -1)
         return unit
 
     def _factor(self) -> Unit:
@@ -199,11 +227,19 @@ class _UnitParser:
         if self._peek().startswith(("^", "**")):
             exponent = int(self._peek().lstrip("^*"))
             self.next += 1
-            unit = _times(ONE, unit, exponent)
+            self._check_power(unit, exponent)
+            unit = product(ONE, unit, exponent)
         return unit
 
+    def _check_power(self, unit: Unit, exponent: int) -> None:
+        powers = [unit.pi_power, *(power for _, power in unit.dimension)]
+        largest = max(abs(power * exponent) for power in powers)
+        bits = unit.factor.height_bits() * abs(exponent)
+        if largest > MAX_UNIT_EXPONENT or bits > MAX_FACTOR_BITS:
+            raise _bad(self.text, "the powers are too high", "write a simpler unit")
 
-def _times(a: Unit, b: Unit, power: int) -> Unit:
+
+def product(a: Unit, b: Unit, power: int) -> Unit:
     """The product a * b^power; a level (degC) inside a product counts as its difference."""
     exponents = dict(a.dimension)
     for base, exponent in b.dimension:
@@ -235,11 +271,26 @@ def _symbol(symbol: str, text: str) -> Unit:
         return Unit(text=symbol, factor=standard[0], dimension=standard[1])
     if not re.fullmatch(r"[^\W\d_][\w]*|[µμΩ]\w*|Ω", symbol):
         raise _bad(text, f"{symbol!r} is not a unit symbol", 'write as "kg m^2/s"')
+    return _library_symbol(symbol, text)
+
+
+def _library_symbol(symbol: str, text: str) -> Unit:
+    registry = _registry()
     try:
-        factor, base = _registry().get_root_units(symbol)
+        factor, base = registry.get_root_units(symbol)
+        name = registry.parse_unit_name(symbol)[0][1]
     except Exception:  # noqa: BLE001 - the library raises several unrelated classes for unknown symbols
         raise _bad(text, f"{symbol!r} is not a known unit", _near_unit(symbol)) from None
-    if _is_constant(symbol):
+    if name in _OWN_BY_NAME:
+        own = _OWN[_OWN_BY_NAME[name]]
+        prefix = Fraction(factor) / Fraction(registry.get_root_units(name)[0])
+        if prefix == 1:
+            return own
+        return product(Unit(text="", factor=fmpq(prefix.numerator, prefix.denominator)), own, 1)
+    if not registry._units[name].is_multiplicative:  # noqa: SLF001 - no public way to ask
+        problem = f"{symbol!r} is logarithmic or counts from a zero of its own"
+        raise _bad(text, problem, "convert the value and use a plain unit")
+    if name in _constants():
         raise _bad(
             text,
             f"{symbol!r} is a constant of nature, not a unit",
@@ -257,13 +308,8 @@ def _constants() -> frozenset[str]:
     return frozenset(names - {"standard_gravity", "standard_atmosphere"})
 
 
-def _is_constant(symbol: str) -> bool:
-    parsed = _registry().parse_unit_name(symbol)
-    return bool(parsed) and parsed[0][1] in _constants()
-
-
 def _near_unit(symbol: str) -> str:
-    for known in _OWN:
+    for known in (*_OWN, *_USUAL):
         if known and known.casefold() == symbol.casefold():
             return f"did you mean {known}?"
     return "unit symbols are case-sensitive: kN, MPa, kg, rad/s, degC, min, h"
@@ -279,6 +325,8 @@ def _from_library(symbol: str, factor: Fraction, bases: Mapping[str, Any], text:
         dimension[_BASES[base]] = int(exponent)
         if base == "gram":  # the SI base unit is the kilogram
             factor /= Fraction(1000) ** int(exponent)
+    if factor.denominator > 10**40 and "radian" in bases:
+        raise _bad(text, f"{symbol!r} is known to some decimals of pi only", "use rad or deg")
     return Unit(
         text=symbol,
         factor=fmpq(factor.numerator, factor.denominator),

@@ -225,10 +225,22 @@ def test_logic_with_three_answers() -> None:
     assert [negation(None), negation(True), negation(False)] == [None, False, True]
 
 
-@pytest.mark.parametrize("name", ["abs", "sign", "sqrt"])
-def test_a_series_at_a_kink_is_not_a_number(name: str) -> None:
-    """|x|, sign(x) and sqrt(x) have no Taylor series at 0."""
-    found = FUNCTIONS[name](arb_series([0, 1], 3))
-    head = found[0] if isinstance(found, arb_series) else found
-    assert isinstance(head, arb)
-    assert head.is_nan()
+def test_a_series_of_the_root_at_zero_is_not_a_number() -> None:
+    """sqrt(x) has no Taylor series at 0, and no coefficient pretends otherwise."""
+    found = FUNCTIONS["sqrt"](arb_series([0, 1], 3))
+    assert isinstance(found, arb_series)
+    assert all(found[k].is_nan() for k in range(3))
+
+
+def test_a_series_at_a_kink_holds_both_branches() -> None:
+    """|x| across 0 has the slopes of both its branches, so x*|x| has the curvature of both."""
+    across = arb_series([arb("0.5", "0.5"), 1], 3)
+    found = FUNCTIONS["abs"](across)
+    assert isinstance(found, arb_series)
+    assert all(found[1].contains(slope) for slope in (-1, 1))
+    product = across * found
+    assert all(product[2].contains(half) for half in (-1, 1))
+    assert float(abs(product[2]).upper()) < 1.001
+    sign = FUNCTIONS["sign"](across)
+    assert isinstance(sign, arb)
+    assert all(sign.contains(value) for value in (-1, 0, 1))
