@@ -17,6 +17,7 @@ special case. Nothing is ever handed to an evaluator of the host language.
 
 from __future__ import annotations
 
+import re
 import sys
 from typing import NoReturn
 
@@ -373,13 +374,21 @@ class _Parser:
         self._binary(_COMPARISONS[operator.text], operator)
 
 
+_NUMBER = re.compile(r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?(?![\w.*/^(+-])")
+
+
 def _lenient_tokens(text: str, where: str) -> list[Token]:
     """Tokens of a text whose tail is a unit: the tail need not be made of tokens."""
     try:
         return tokenize(text, where)
     except ExpressionError:
-        # cut at the first space, where "number unit" splits
-        head, _, _ = text.strip().partition(" ")
-        tokens = tokenize(head, where)
-        rest = text.index(head) + len(head)
-        return [*tokens[:-1], Token("rest", text[rest:].strip(), rest), Token("end", "", len(text))]
+        # cut at the first space, where "number unit" splits, or behind the number of "20°C"
+        lead = len(text) - len(text.lstrip())
+        number = _NUMBER.match(text, lead)
+        space = text.find(" ", lead)
+        if number is None or text[number.end() : space] == "":
+            cut = space if space >= 0 else len(text)
+        else:
+            cut = number.end()
+        tokens = tokenize(text[:cut], where)
+        return [*tokens[:-1], Token("rest", text[cut:].strip(), cut), Token("end", "", len(text))]

@@ -46,16 +46,19 @@ def read_value(
     used: set[str] = set()
 
     def resolve(name: str, primes: int, place: str) -> Node:
-        if primes or name not in names:
-            if rest.strip() or not primes:
-                hint = nearest(name, [*names]) or "a value is a number, maybe with a unit"
-            else:
-                hint = "remove the prime"
+        if primes:
+            raise DeclarationError(
+                "value.name",
+                f"{name}{chr(39) * primes} is a rate; a value is constant",
+                where=place,
+                hint="remove the prime",
+            )
+        if name not in names:
             raise DeclarationError(
                 "value.name",
                 f"{name} is not a parameter, so it has no meaning in a value",
                 where=place,
-                hint=hint,
+                hint=nearest(name, [*names]) or "a value is a number, maybe with a unit",
             )
         used.add(name)
         return graph.var(name)
