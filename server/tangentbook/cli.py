@@ -223,7 +223,7 @@ def _schema(options: argparse.Namespace) -> int:
 
 
 def _not_available(what: str, why: str) -> TangentbookError:
-    return TangentbookError("request.not-available", why, where=what)
+    return TangentbookError("command.not-available", why, where=what)
 
 
 def _refuse(error: TangentbookError, *, as_json: bool) -> int:
@@ -239,7 +239,7 @@ def _is_of_command_line(code: str) -> bool:
     return code.startswith(("file.", "sheet.")) or code in {
         "request.tool",
         "request.schema",
-        "request.not-available",
+        "command.not-available",
     }
 
 

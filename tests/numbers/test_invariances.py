@@ -121,10 +121,6 @@ def test_one_call_for_two_points_says_the_same_as_two_calls() -> None:
         assert {**together[k], "request": 0, "id": "p1"} == alone
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="the search runs at the precision that the call before left behind",
-)
 @pytest.mark.parametrize("angle", ["40 deg", "80 deg"])
 def test_the_call_before_does_not_change_a_result(angle: str) -> None:
     """A fresh worker (53 bits) and a used one (256 bits) give the same check values."""

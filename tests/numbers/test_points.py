@@ -10,8 +10,6 @@ import pytest
 from published.calling import JSON, call, caution_text, check, codes
 from published.matching import about
 
-XFAIL = pytest.mark.xfail
-
 
 def plant(*equations: str, **more: object) -> JSON:
     """A plant in pure numbers."""
@@ -45,10 +43,6 @@ def test_states_of_1e_minus_9_and_1e9_side_by_side() -> None:
     assert not codes(result) & {"other-points", "check-failed"}
 
 
-@XFAIL(
-    strict=True,
-    reason="starts that meet the conditions only to the floor of one unit count as other points",
-)
 def test_no_points_are_invented_where_typical_sizes_are_missing() -> None:
     """The equations have exactly one solution; a caution must not tell of others."""
     result = call("trim", SIZES)
@@ -88,10 +82,6 @@ def test_a_multiple_root_is_found_to_all_printed_digits(which: str) -> None:
     assert found["values"]["x"]["value"] == about(root, rel=6e-10)
 
 
-@XFAIL(
-    strict=True,
-    reason="a Jacobian of one entry is scaled to 1 however small: its singularity is not seen",
-)
 @pytest.mark.parametrize("which", DOUBLE)
 def test_a_multiple_root_is_told(which: str) -> None:
     """Small changes of the plant make the point vanish: the reader must know."""
@@ -106,10 +96,6 @@ def test_a_double_root_at_zero_is_told() -> None:
     assert "singular-point" in codes(result)
 
 
-@XFAIL(
-    strict=True,
-    reason="an entry that is 0 within its bound is compared with itself in a row without others",
-)
 def test_the_model_at_a_double_root_is_confirmed() -> None:
     """X' = (x-1)^2 at 1: A = 0 within 1e-20, which the second routes confirm."""
     result = call("linearize", plant("x' = (x-1)^2"), {"guess": {"x": 1.2}})
@@ -118,10 +104,6 @@ def test_the_model_at_a_double_root_is_confirmed() -> None:
     assert "NOT" not in result["answer"]
 
 
-@XFAIL(
-    strict=True,
-    reason="a ball around 0 counts as its midpoint, whose square root passes for an eigenvalue",
-)
 def test_a_zero_that_is_only_bounded_makes_no_growing_eigenvalue() -> None:
     """X'' = u - cos(x) at pi: A = [[0, 1], [sin(pi), 0]], a double zero, no side may be claimed."""
     raw = plant("x'' = u - cos(x)", inputs=["u"])
@@ -130,10 +112,6 @@ def test_a_zero_that_is_only_bounded_makes_no_growing_eigenvalue() -> None:
     assert "eigenvalue-right" not in codes(result)
 
 
-@XFAIL(
-    strict=True,
-    reason="the rounding of the printed imaginary part counts as uncertainty of the real part",
-)
 def test_a_weakly_damped_pair_is_not_called_undecidable() -> None:
     """Real part -5e-11 beside sqrt(2): known to 40 digits, so its side is known."""
     raw = plant("x'' + 1e-10*x' + 2*x = 0")
@@ -163,10 +141,6 @@ def test_just_before_a_fold_both_points_are_told(distance: str) -> None:
     assert "other-points" in codes(result)
 
 
-@XFAIL(
-    strict=True,
-    reason="a start at a stationary point of the residual counts as a contradiction",
-)
 @pytest.mark.parametrize("text", ["x' = x^2 - 1", "x' = x^2 + 1"])
 def test_a_guess_at_a_stationary_point_is_no_contradiction(text: str) -> None:
     """Nothing is held, so no hold can be dropped; for x^2 - 1 the points -1 and 1 exist."""
@@ -174,11 +148,6 @@ def test_a_guess_at_a_stationary_point_is_no_contradiction(text: str) -> None:
     assert found.get("reason") != "conflict"
 
 
-@XFAIL(
-    strict=True,
-    raises=np.linalg.LinAlgError,
-    reason="a start from which the exponential overflows ends in an error of the library",
-)
 def test_a_search_that_overflows_is_an_answer() -> None:
     """The three equations have no common solution; that is `not found`, not an error."""
     raw = plant(

@@ -477,9 +477,6 @@ def test_an_expectation_that_fails_is_status_one(
     assert [one["outcome"] for one in listed[1:]] == ["holds"] * 4
 
 
-@pytest.mark.xfail(
-    strict=True, reason="leaves with 2, as if the file or the command line were not understood"
-)
 @pytest.mark.usefixtures("folder")
 def test_a_refused_part_of_the_language_is_status_one(
     monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]

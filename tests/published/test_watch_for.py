@@ -44,10 +44,6 @@ def test_where_several_points_exist_the_reader_is_told(name: str) -> None:
         assert re.search(rf"{re.escape(other)}(?!\.?\d)", text), other
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="all starts run to the extinction point; the coexistence point at (133, 25) is not met",
-)
 def test_the_second_point_of_lotka_volterra_is_told() -> None:
     """Two equilibria exist; a request without a guess gives one of them."""
     assert "other-points" in codes(_unguided("lotka-volterra"))
@@ -227,7 +223,7 @@ def test_published_levels_are_no_equilibrium() -> None:
         (entry,) = result["points"]
         assert entry["reason"] == "conflict"
         assert {"hold h3", "hold v2"} <= set(entry["blocking"])
-        assert entry["closest"]["h1"] == {"value": 12.4, "unit": "cm", "known": "measured"}
+        assert entry["closest"]["h1"] == {"value": 12.4, "unit": "cm", "known": "exact"}
         assert "contradict" in result["answer"]
         assert "model" not in entry
 
@@ -258,10 +254,6 @@ def test_the_currents_of_the_suspended_ball() -> None:
     assert abs(entry["values"]["i"]["value"]) == 7
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="guesses of 0 are not loosened, and a singular start counts as conflict",
-)
 def test_guesses_of_zero_at_a_singular_start_are_no_conflict() -> None:
     """No current makes the Jacobian singular; +-7 A exist, so nothing contradicts anything."""
     asked = {"hold": {"h": 0.01}, "guess": {"i": 0, "V": 0}}

@@ -96,12 +96,22 @@ def by_differences(at: Surroundings, model: LinearModel) -> Confirmation:
             return Confirmation(
                 value=None, why="the original equations are not met beside the point"
             )
+        here = [*at.base, *(at.unknowns[name] for name in at.rates.plant.unknowns)]
         offset = len(at.base)
-        for k, name in enumerate(at.rates.plant.unknowns):
-            worst.add(name, group, (ahead[offset + k] - back[offset + k]) / 2)
-        pairs = zip(at.rates.outputs(ahead), at.rates.outputs(back), strict=True)
-        for output, (high, low) in zip(model.outputs, pairs, strict=True):
-            worst.add_output(output, group, (high - low) / 2)
+        for k, name in enumerate(at.rates.plant.unknowns, start=offset):
+            bend = abs(ahead[k] + back[k] - 2 * here[k]) / 2
+            worst.add(name, group, (ahead[k] - back[k]) / 2, bend=bend)
+        rows = zip(
+            model.outputs,
+            at.rates.outputs(ahead),
+            at.rates.outputs(back),
+            at.rates.outputs(here),
+            strict=True,
+        )
+        for output, high, low, middle in rows:
+            bend = abs(high + low - 2 * middle) / 2
+            worst.add_output(output, group, (high - low) / 2, bend=bend)
+        worst.add_chain(group)
     return worst.result()
 
 
@@ -139,12 +149,13 @@ def by_remainder(at: Surroundings, model: LinearModel) -> Confirmation:
         bounds = [_second(s) for s in series[len(at.base) :]]
         here = [at.unknowns[name] for name in at.rates.plant.unknowns]
         for k, name in enumerate(at.rates.plant.unknowns):
-            worst.add(name, group, ahead[len(at.base) + k] - here[k], bounds[k])
+            worst.add(name, group, ahead[len(at.base) + k] - here[k], slack=bounds[k])
         outputs = at.rates.output_series(series)
         start = at.rates.outputs([*at.base, *here])
         end = at.rates.outputs(ahead)
         for k, output in enumerate(model.outputs):
-            worst.add_output(output, group, end[k] - start[k], _second(outputs[k]))
+            worst.add_output(output, group, end[k] - start[k], slack=_second(outputs[k]))
+        worst.add_chain(group)
     return worst.result()
 
 
@@ -163,27 +174,62 @@ def _second(series: object) -> arb:
 
 
 class _Worst:
-    """Collects the largest relative disagreement over all entries."""
+    """Collects the largest relative disagreement over all entries.
+
+    `slack` is what a change may differ by (the remainder's bound), `bend` the size of the second
+    difference; both tell how curved a row is where it has no slope to be judged against.
+    """
 
     def __init__(self, model: LinearModel, at: Surroundings) -> None:
         self.model = model
         self.at = at
         self.value = arb(0)
         self.entry = ""
+        # algebraic unknowns have rows of their own; the rates stand in A and B
+        self.rows = {**model.unknowns, **{s + "'": model.rates[s] for s in model.states}}
 
-    def add(self, name: str, group: Sequence[str], change: arb, slack: arb | None = None) -> None:
+    def add(
+        self,
+        name: str,
+        group: Sequence[str],
+        change: arb,
+        *,
+        slack: arb | None = None,
+        bend: arb | None = None,
+    ) -> None:
         """One row of a group: the change of an unknown against what the model says."""
-        self._compare(name, self.model.unknowns.get(name, {}), group, change, slack)
+        self._compare(name, self.rows.get(name, {}), group, change, (slack, bend))
 
     def add_output(
-        self, name: str, group: Sequence[str], change: arb, slack: arb | None = None
+        self,
+        name: str,
+        group: Sequence[str],
+        change: arb,
+        *,
+        slack: arb | None = None,
+        bend: arb | None = None,
     ) -> None:
         """The same for an output."""
-        self._compare(f"output {name}", self.model.output_rows[name], group, change, slack)
+        row = self.model.output_rows[name]
+        self._compare(f"output {name}", row, group, change, (slack, bend))
+
+    def add_chain(self, group: Sequence[str]) -> None:
+        """Rows of states whose rate is itself a state: it moves by its own step, exactly."""
+        for state in self.model.states:
+            rate = state + "'"
+            if rate in self.at.columns:
+                change = self.at.step(rate) if rate in group else arb(0)
+                self._compare(rate, self.rows[rate], group, change, (None, None))
 
     def _compare(
-        self, name: str, row: Row, group: Sequence[str], change: arb, slack: arb | None
+        self,
+        name: str,
+        row: Row,
+        group: Sequence[str],
+        change: arb,
+        tolerance: tuple[arb | None, arb | None],
     ) -> None:
+        slack, bend = tolerance
         predicted = arb(0)
         own: str | None = None
         for column in group:
@@ -193,21 +239,30 @@ class _Worst:
         error = abs(change - predicted)
         if slack is not None:
             error = (error - slack).max(arb(0))
-        scale = self._scale(row, own)
+        scale = self._scale(row, own, slack if bend is None else bend)
         relative = arb(error.upper()) / scale
         if relative > self.value or not relative.is_finite():
             self.value = relative
             self.entry = f"{name} / {own or group[0]}"
 
-    def _scale(self, row: Row, own: str | None) -> arb:
+    def _scale(self, row: Row, own: str | None, bend: arb | None) -> arb:
         """The entry's own effect; the row's largest where the entry is zero."""
+        effects = {
+            column: arb(abs(value).upper()) * self.at.step(column)
+            for column, value in row.items()
+            if not value.contains(0)
+        }
         largest = arb(0)
-        for column, value in row.items():
-            largest = largest.max(arb(abs(value).upper()) * self.at.step(column))
-        if own is not None and not row[own].contains(0):
+        for effect in effects.values():
+            largest = largest.max(effect)
+        if own in effects:
             # an entry a million million times smaller than its row is judged as that much smaller
-            return (abs(row[own]) * self.at.step(own)).max(largest * arb("1e-12"))
-        return largest if largest > 0 else _STEP
+            return effects[own].max(largest * arb("1e-12"))
+        if effects:
+            return largest
+        # a flat row: what its slope becomes a typical size away
+        curved = arb(0) if bend is None else bend / _STEP
+        return curved.max(_STEP * arb("1e-12"))
 
     def result(self) -> Confirmation:
         """The finding; None where a disagreement could not be computed."""

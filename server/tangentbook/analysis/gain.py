@@ -98,9 +98,7 @@ def _refined(model: LinearModel) -> list[list[arb]] | None:
     """A^-1 B by columns: sparse LU, corrected by exact residuals until the digits settle."""
     states = model.states
     position = {name: k for k, name in enumerate(states)}
-    rows = [
-        [(position[c], v) for c, v in model.rates[s].items() if c in position] for s in states
-    ]
+    rows = [[(position[c], v) for c, v in model.rates[s].items() if c in position] for s in states]
     solve = _sparse_lu(rows)
     if solve is None:
         return None

@@ -18,10 +18,12 @@ import numpy as np
 from scipy.sparse import csc_array, diags_array
 from scipy.sparse.linalg import splu
 
+from tangentbook.analysis.scaling import equilibrate
 from tangentbook.analysis.settings import (
     DENSE_UP_TO,
     NEWTON_STEPS,
     NEWTON_TOLERANCE,
+    POLISHING_STEPS,
     RANK_TOLERANCE,
     RESIDUAL_LIMIT,
     SMALLEST_DAMPING,
@@ -69,11 +71,14 @@ def solve(
     converged = False
     for _ in range(NEWTON_STEPS):
         scale = np.maximum(typical, np.abs(q))
-        back = _least_squares(system, entries, scale)
+        try:
+            back = _least_squares(system, entries, scale)
+        except DomainError:
+            return None
         d = back(-residual)
         length = float(np.linalg.norm(d))
         if float(np.max(np.abs(d), initial=0.0)) <= NEWTON_TOLERANCE:
-            q = _landed(system, q, np.clip(q + scale * d, low, high))
+            q = _polished(system, q, np.clip(q + scale * d, low, high), (low, high))
             converged = True
             break
         moved = _damped(system, q, (scale, d, length), back, (low, high))
@@ -83,13 +88,27 @@ def solve(
     return _judged(system, q, typical, converged=converged)
 
 
-def _landed(system: System, q: Vector, last: Vector) -> Vector:
-    """The last full step, unless it leaves the domain."""
-    try:
-        system.both(last)
-    except DomainError:
-        return q
-    return last
+def _polished(system: System, q: Vector, last: Vector, bounds: tuple[Vector, Vector]) -> Vector:
+    """The last full steps, while they shrink and stay inside the domain."""
+    size = _relative(last, q)
+    for _ in range(POLISHING_STEPS):
+        try:
+            residual, entries = system.both(last)
+            scale = np.maximum(np.abs(last), 1e-300)
+            step = scale * _least_squares(system, entries, scale)(-residual)
+        except DomainError:
+            return q
+        q, last = last, np.clip(last + step, *bounds)
+        moved = _relative(last, q)
+        if moved == 0 or moved > size:
+            return q
+        size = moved
+    return q
+
+
+def _relative(a: Vector, b: Vector) -> float:
+    """The largest relative change of a value."""
+    return float(np.max(np.abs(a - b) / np.maximum(np.abs(a), 1e-300), initial=0.0))
 
 
 def descend(
@@ -172,17 +191,19 @@ def _damped(
 
 def _least_squares(system: System, entries: Vector, scale: Vector) -> Solve:
     """The map from a right side to the (scaled) step."""
-    rows, columns = system.shape
-    if rows == columns and columns > DENSE_UP_TO:
+    count, unknowns = system.shape
+    if count == unknowns and unknowns > DENSE_UP_TO:
         sparse = _sparse_solve(system, entries, scale)
         if sparse is not None:
             return sparse
     matrix = system.dense(entries) * scale
-    weight = _row_weight(np.max(np.abs(matrix), axis=1, initial=0.0))
-    u, s, vt = np.linalg.svd(matrix * weight[:, None], full_matrices=False)
+    if not np.isfinite(matrix).all():  # far out, the Jacobian overflows once it is scaled
+        raise DomainError
+    equal, rows, columns = equilibrate(matrix)
+    u, s, vt = np.linalg.svd(equal, full_matrices=False)
     keep = s > RANK_TOLERANCE * max(float(s[0]) if len(s) else 0.0, 1e-300)
     u, s, vt = u[:, keep], s[keep], vt[keep]
-    return lambda right: vt.T @ ((u.T @ (weight * right)) / s)
+    return lambda right: columns * (vt.T @ ((u.T @ (rows * right)) / s))
 
 
 def _sparse_solve(system: System, entries: Vector, scale: Vector) -> Solve | None:

@@ -12,7 +12,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from tangentbook.analysis.scaling import equilibrate
 from tangentbook.analysis.settings import RANK_TOLERANCE, RESIDUAL_LIMIT
+from tangentbook.analysis.system import neighbours
 from tangentbook.calculus.derive import gradients
 from tangentbook.calculus.evaluate import DomainError, Function
 
@@ -29,24 +31,27 @@ _FOLLOW = 1e-3
 _SHARE = 1e-6
 
 
-def equilibrate(matrix: Matrix) -> tuple[Matrix, Vector, Vector]:
-    """Rows and columns scaled to largest entry 1 (Ruiz, 2001): scaled, row and column factors."""
-    scaled = matrix.copy()
-    rows, columns = np.ones(matrix.shape[0]), np.ones(matrix.shape[1])
-    for _ in range(12):
-        r = np.sqrt(np.max(np.abs(scaled), axis=1, initial=0.0))
-        c = np.sqrt(np.max(np.abs(scaled), axis=0, initial=0.0))
-        r, c = np.where(r > 0, r, 1.0), np.where(c > 0, c, 1.0)
-        scaled = scaled / r[:, None] / c[None, :]
-        rows, columns = rows / r, columns / c
-    return scaled, rows, columns
-
-
-def _singular(system: System, q: Vector) -> tuple[Matrix, Vector, Matrix, Vector]:
+def _singular(system: System, q: Vector, typical: Vector) -> tuple[Matrix, Vector, Matrix, Vector]:
     _, entries = system.both(q)
-    scaled, _, columns = equilibrate(system.dense(entries))
+    matrix = system.dense(entries)
+    scaled, _, columns = equilibrate(matrix, _nearby(system, q, typical, matrix))
     u, s, vt = np.linalg.svd(scaled, full_matrices=True)
     return u, s, vt, columns
+
+
+def _nearby(system: System, q: Vector, typical: Vector, matrix: Matrix) -> Matrix:
+    """The largest size of each entry of J in a small neighbourhood.
+
+    At a double root whole rows or columns of J vanish; measured by themselves they would look as
+    good as any other.
+    """
+    largest = np.abs(matrix)
+    for moved in neighbours(q, typical):
+        try:
+            largest = np.maximum(largest, np.abs(system.dense(system.both(moved)[1])))
+        except DomainError:
+            continue
+    return largest
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -67,7 +72,7 @@ def freedom(system: System, q: Vector, typical: Vector, low: Vector, high: Vecto
     if not system.shape[1]:
         return Freedom(loose=(), singular=False, conditioning=1.0)
     try:
-        _, s, vt, columns = _singular(system, q)
+        _, s, vt, columns = _singular(system, q, typical)
     except DomainError:
         return Freedom(loose=(), singular=True, conditioning=float("inf"))
     full = np.zeros(system.shape[1])
@@ -196,6 +201,19 @@ def blocking(system: System, q: Vector) -> tuple[tuple[str, ...], bool]:
     named = [label for label, w in zip(labels, weight, strict=True) if w > 1e-3 * largest]
     # that rates are zero is what "at rest" means; naming it helps nobody
     names = tuple(label for label in named if not label.endswith("= 0 at rest")) or tuple(named)
-    free_rank = min(matrix.shape)
-    contradiction = matrix.shape[0] > matrix.shape[1] or int(np.sum(~rankless)) < free_rank
-    return names, bool(contradiction and left.size)
+    return names, bool(left.size) and _generic_rank(system, q) < matrix.shape[0]
+
+
+def _generic_rank(system: System, q: Vector) -> int:
+    """The rank of the full Jacobian at points around q (at q itself it may be lower by chance)."""
+    random = np.random.default_rng(7)
+    best = 0
+    for spread in (0.1, 0.3, 1.0):
+        moved = q + spread * np.maximum(np.abs(q), 1.0) * random.standard_normal(len(q))
+        try:
+            scaled, _, _ = equilibrate(_full(system, moved)[0])
+        except DomainError:
+            continue
+        s = np.linalg.svd(scaled, compute_uv=False)
+        best = max(best, int(np.sum(s > 1e-6 * max(float(s[0]), 1e-300))))
+    return best

@@ -5,7 +5,7 @@ from __future__ import annotations
 PRECISION = 256
 """Bits of the ball arithmetic behind printed numbers: 10 digits survive the loss of 50 more."""
 
-STARTS = ((20, 32), (100, 8), (2000, 3))
+STARTS = ((20, 60), (100, 8), (2000, 3))
 """(unknowns up to, starts): enough starts to notice other points on small plants; a start costs a
 sparse factorisation per step on large ones."""
 
@@ -13,10 +13,19 @@ START_SPREAD = (-1.5, 3.0)
 """Random starts lie within 10^-1.5 … 10^3 typical sizes (one declared unit if none is given, which
 is more often too small than too large); beyond, `typical` or a guess is called for."""
 
+SAME_POINT = 1e-9
+"""Relative distance below which two solutions are one; near a fold two may be close."""
+
+OTHER_POINTS = 8
+"""At most this many other points are refined and named."""
+
 SLOW_STARTS = 6
 """Starts of the least-squares descent when no Newton iteration reached a solution."""
 
 NEWTON_STEPS = 60
+POLISHING_STEPS = 4
+"""Full steps after convergence: values far below their typical size become accurate, too."""
+
 NEWTON_TOLERANCE = 1e-10
 """Scaled step at which the double-precision iteration hands over to the ball refinement."""
 
@@ -50,8 +59,9 @@ then exact to about 2^-80, and its rounding to 2^-200."""
 
 SECOND_ROUTE_LIMIT = 1e-9
 REMAINDER_LIMIT = 1e-9
-POINT_LIMIT = 1e-6
+POINT_LIMIT = 1e-9
 EIGENVALUE_LIMIT = 1e-9
+PRINTED_UNITS_LIMIT = 1e-9
 PRINTED_ZERO_LIMIT = 1e-12
 """Limits of the check values: well below the 1e-4 that a wrong entry shows, well above the error
 of two correct routes."""

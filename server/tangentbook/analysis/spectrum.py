@@ -110,11 +110,11 @@ def _precise(matrix: arb_mat) -> tuple[list[Eigenvalue], float]:
     precision = ctx.prec
     ctx.prec = PRECISION * _EXTRA_BITS // 4
     try:
-        middle = _balanced(matrix.mid())
+        middle = _balanced(_without_doubt(matrix))
         values: Sequence[acb] = acb_mat(middle).eig(algorithm="approx")
         values = [acb(v.real.mid(), v.imag.mid()) for v in values]
         difference = _polynomial_difference(middle, values)
-        radius = _radii(values, difference, _uncertainty(matrix), size)
+        radius = _radii(values, difference, _uncertainty(matrix), _norm(middle))
     finally:
         ctx.prec = precision
     return [
@@ -145,9 +145,32 @@ def _balanced(matrix: arb_mat) -> arb_mat:
     ).mid()
 
 
+def _without_doubt(matrix: arb_mat) -> arb_mat:
+    """The midpoints, with 0 for every entry that may be zero (its bound counts as uncertainty)."""
+    size = matrix.nrows()
+    return arb_mat(
+        size,
+        size,
+        [
+            arb(0) if matrix[i, j].contains(0) else matrix[i, j].mid()
+            for i in range(size)
+            for j in range(size)
+        ],
+    )
+
+
 def _uncertainty(matrix: arb_mat) -> float:
     size = matrix.nrows()
-    return max(float(matrix[i, j].rad()) for i in range(size) for j in range(size))
+    entries = [matrix[i, j] for i in range(size) for j in range(size)]
+    return max(float(abs(e).upper()) if e.contains(0) else float(e.rad()) for e in entries)
+
+
+def _norm(matrix: arb_mat) -> float:
+    """The largest row sum of absolute entries."""
+    size = matrix.nrows()
+    return max(
+        float(sum((abs(matrix[i, j]) for j in range(size)), arb(0)).mid()) for i in range(size)
+    )
 
 
 def _polynomial_difference(matrix: arb_mat, values: Sequence[acb]) -> float:
@@ -170,27 +193,27 @@ def _polynomial_difference(matrix: arb_mat, values: Sequence[acb]) -> float:
     return worst
 
 
-def _radii(values: Sequence[acb], difference: float, uncertainty: float, size: int) -> list[float]:
+def _radii(
+    values: Sequence[acb], difference: float, uncertainty: float, norm: float
+) -> list[float]:
     """Estimated error of each eigenvalue: first order where it is separate, a root otherwise.
 
     The error of a root of a polynomial whose coefficients are off by eps (relative) is about
     eps * bound(|lambda|) / prod |lambda - mu|; where roots nearly coincide the k-th root of that.
+    Sizes are relative to the norm of the (balanced) block.
     """
+    size = len(values)
+    largest = norm or 1.0
+    shift = max(difference, uncertainty / largest, 1e-120)
     radii: list[float] = []
-    largest = max(float(abs(v).mid()) for v in values) or 1.0
-    # the perturbation may be below the range of doubles, so it is handled as a logarithm
-    shift = max(difference * largest, uncertainty, largest * 1e-120)
     for k, value in enumerate(values):
-        gaps = sorted(
-            max(float(abs(value - other).mid()), 0.0) for j, other in enumerate(values) if j != k
-        )
-        near = [g for g in gaps if g < 1e-6 * largest]
-        multiplicity = len(near) + 1
+        gaps = [float(abs(value - other).mid()) for j, other in enumerate(values) if j != k]
+        near = sum(1 for gap in gaps if gap < 1e-6 * largest)
         far = 1.0
-        for gap in gaps[len(near) :]:
-            far *= max(gap / largest, 1e-8)
-        relative = min(shift / largest / far, 1.0)
-        radii.append(min(16 * size * largest * relative ** (1.0 / multiplicity), largest))
+        for gap in gaps:
+            far *= max(gap / largest, 1e-8) if gap >= 1e-6 * largest else 1.0
+        relative = min(shift / far, 1.0)
+        radii.append(min(16 * size * largest * relative ** (1.0 / (near + 1)), largest))
     return radii
 
 

@@ -41,13 +41,18 @@ def start_points(
     yield placed(np.where(declared, typical, 0.0))
     yield placed(typical.copy())
     random = np.random.default_rng(20240229)  # any constant: the starts must be the same everywhere
-    for _ in range(_count(n) - 2):
-        size = typical * 10.0 ** random.uniform(*START_SPREAD, n)
-        sign = np.where(random.uniform(size=n) < 0.7, 1.0, -1.0)
+    for k in range(_count(n) - 2):
+        # every quantity on its own, or all of one magnitude; all positive every third time, as
+        # levels, temperatures and masses are
+        spread = random.uniform(*START_SPREAD, n)
+        common = random.uniform(*START_SPREAD) + random.uniform(-0.5, 0.5, n)
+        size = typical * 10.0 ** (common if k % 3 else spread)
+        sign = np.where((random.uniform(size=n) < 0.6) | (k % 3 == 2), 1.0, -1.0)
         start = np.where(both, bottom + width * random.uniform(size=n), size * sign)
-        # a guess is kept, then loosened: other points near it are worth knowing
-        near = guess * (1 + 0.1 * random.standard_normal(n)) + 0.0
-        yield np.where(guessed, np.clip(near, low, high), placed(start))
+        # a guess is loosened: it may be a singular spot, and points near it are worth knowing
+        reach = 0.1 * np.maximum(np.abs(guess), typical) * random.standard_normal(n)
+        near = np.clip(guess + reach, low, high)
+        yield np.where(guessed, near, placed(start))
 
 
 def _count(n: int) -> int:

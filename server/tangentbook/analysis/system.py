@@ -32,6 +32,9 @@ if TYPE_CHECKING:
     Matrix = npt.NDArray[np.float64]
 
 
+NEAR = 1e-3
+
+
 class System:
     """Residual and Jacobian of one point's open rows; see the module docstring."""
 
@@ -103,19 +106,28 @@ class System:
         return values[: self.shape[0]], values[self.shape[0] :]
 
     def sizes(self, q: Vector, typical: Vector) -> Vector:
-        """The size of each row at q, against which its residual is judged."""
+        """The size of each row around q, against which its residual is judged.
+
+        At a double root terms and slopes vanish together, so a small neighbourhood is asked.
+        """
+        largest = np.full(self.shape[0], 1e-300)
+        for point in (q, *neighbours(q, typical)):
+            try:
+                largest = np.maximum(largest, self._sizes_at(point, typical))
+            except DomainError:
+                continue
+        return largest
+
+    def _sizes_at(self, q: Vector, typical: Vector) -> Vector:
         values = self.point(q)
         sizes = self._terms.floats(values)
         reach = {n: abs(v) for n, v in zip(self.names, values, strict=True)}
         for name, floor in zip(self.free, typical, strict=True):
             reach[name] = max(reach[name], float(floor))
-        try:
-            slopes = iter(self._slope_values.floats(values))
-        except DomainError:
-            slopes = iter([0.0] * len(self._slope_values.outputs))
+        slopes = iter(self._slope_values.floats(values))
         for k, row in enumerate(self._slopes):
             sizes[k] += sum(abs(next(slopes)) * reach[name] for name in row)
-        return np.maximum(np.array(sizes), 1e-300)
+        return np.array(sizes)
 
     def ball_residual(self, q: Sequence[arb]) -> list[arb]:
         """R over balls."""
@@ -142,6 +154,14 @@ class System:
             if found is not None:
                 return self.conditions.rows[row].label, found
         return None
+
+
+def neighbours(q: Vector, typical: Vector) -> tuple[Vector, Vector]:
+    """Two points a thousandth of each size away from q."""
+    reach = np.where(np.abs(q) > 1e-12 * typical, np.abs(q), typical) * NEAR
+    # unequal shares, so that no symmetry of the equations hides an entry
+    shift = reach * np.linspace(0.6, 1.0, len(q))
+    return q + shift, q - shift
 
 
 def _size(plant: Plant, residual: Node) -> Node:

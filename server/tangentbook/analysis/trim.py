@@ -20,16 +20,19 @@ from tangentbook.analysis.constants import Constants
 from tangentbook.analysis.newton import Attempt, descend, solve
 from tangentbook.analysis.refine import refine
 from tangentbook.analysis.settings import (
+    OTHER_POINTS,
     PRECISION,
     REFINED_RESIDUAL_LIMIT,
     RESIDUAL_LIMIT,
+    SAME_POINT,
     SLOW_STARTS,
 )
 from tangentbook.analysis.starts import start_points
 from tangentbook.analysis.system import System
+from tangentbook.calculus.evaluate import DomainError
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Mapping, Sequence
 
     import numpy.typing as npt
 
@@ -80,6 +83,7 @@ def find_point(plant: Plant, text: PointText) -> OperatingPoint | NoPoint:
     Raises:
         PointError: the request itself cannot be understood.
     """
+    ctx.prec = PRECISION  # whatever the caller left: the same numbers in every process
     constants = Constants(plant, text.set)
     conditions = understand_point(plant, text)
     with np.errstate(all="ignore"):  # far-off starts may overflow; they are judged by the outcome
@@ -165,6 +169,18 @@ class _Search:
             key=lambda a: float(np.linalg.norm(((a.q - self.guess) / self.typical)[guessed])),
         )
 
+    def unwound(self, q: Vector) -> Vector:
+        """The same point with whole turns taken off, where that is one."""
+        turning = np.isfinite(self.period)
+        period = np.where(turning, self.period, 1.0)
+        turns = np.where(turning, np.round(q / period), 0.0)
+        nearer = q - turns * np.where(turning, self.period, 0.0)
+        try:
+            residual = self.system.residual(nearer) / self.system.sizes(nearer, self.typical)
+        except DomainError:
+            return q
+        return nearer if np.max(np.abs(residual), initial=0.0) <= RESIDUAL_LIMIT else q
+
     def same(self, a: Vector, b: Vector) -> bool:
         """Whether two solutions are one point (angles up to their period)."""
         difference = np.abs(a - b)
@@ -173,54 +189,77 @@ class _Search:
         difference -= np.where(turning, np.round(difference / period) * period, 0.0)
         difference = np.abs(difference)
         scale = np.maximum(self.typical * 1e-3, np.maximum(np.abs(a), np.abs(b)))
-        return bool(np.all(difference <= 1e-5 * scale))
+        return bool(np.all(difference <= SAME_POINT * scale))
 
 
 def _point(search: _Search, chosen: Attempt, solved: Sequence[Attempt]) -> OperatingPoint | NoPoint:
     system = search.system
-    conditions = system.conditions
-    bounds = (search.low, search.high)
-    freedom = rank.freedom(system, chosen.q, search.typical, *bounds)
-    loose = freedom.loose
-    if loose:
-        # at a special point some quantities seem fixed; the union over a few points names them all
-        more = [rank.freedom(system, a.q, search.typical, *bounds).loose for a in solved[:4]]
-        loose = tuple(n for n in system.free if any(n in names for names in [loose, *more]))
-    if loose:
-        names = ", ".join(loose)
-        return NoPoint(
-            plant=system.plant,
-            constants=system.constants,
-            conditions=conditions,
-            reason="undetermined",
-            why=f"the conditions leave {names} undetermined; hold one of them (or another quantity "
-            "that fixes it)",
-            undetermined=loose,
-            closest=_named(search, chosen.q),
-            residual=chosen.residual,
-        )
-    ctx.prec = PRECISION
     refined = refine(system, chosen.q, search.typical)
     limit = REFINED_RESIDUAL_LIMIT if refined.settled else RESIDUAL_LIMIT
     if refined.residual > limit:
         return _no_point(search, [chosen])
+    q = np.array([float(v.mid()) for v in refined.values])
+    bounds = (search.low, search.high)
+    freedom = rank.freedom(system, q, search.typical, *bounds)
+    if freedom.loose:
+        # at a special point some quantities seem fixed; the union over a few points names them all
+        more = [rank.freedom(system, a.q, search.typical, *bounds).loose for a in solved[:4]]
+        every = {name for names in (freedom.loose, *more) for name in names}
+        return _undetermined(search, chosen, tuple(n for n in system.free if n in every))
     values = _values(search, refined.values)
-    others: list[Vector] = []
-    for attempt in solved:
-        if not any(search.same(attempt.q, q) for q in [chosen.q, *others]):
-            others.append(attempt.q)
     return OperatingPoint(
         plant=system.plant,
         constants=system.constants,
-        conditions=conditions,
+        conditions=system.conditions,
         values=values,
         first=_named(search, chosen.q),
-        residual=refined.residual,
+        residual=residual_at(system, values, search.typical),
         settled=refined.settled,
         conditioning=freedom.conditioning,
         redundant=() if freedom.singular else rank.redundant(system, chosen.q),
-        others=tuple(_named(search, q) for q in others),
+        others=_others(search, q, solved),
         singular=freedom.singular,
+    )
+
+
+def residual_at(system: System, values: Mapping[str, arb], typical: Vector) -> float:
+    """The largest residual at the values that are given out, each against the size of its row."""
+    free = [values[name].mid() for name in system.free]
+    sizes = system.sizes(np.array([float(v) for v in free]), typical)
+    residual = system.ball_residual(free)
+    return max(
+        (float(abs(r).upper() / s) for r, s in zip(residual, sizes, strict=True)), default=0.0
+    )
+
+
+def _others(search: _Search, q: Vector, solved: Sequence[Attempt]) -> tuple[dict[str, float], ...]:
+    """Other points that some start reached; refined, so that a poor copy of one is not two."""
+    found = [q]
+    for attempt in solved:
+        if len(found) > OTHER_POINTS:
+            break
+        if any(search.same(attempt.q, other) for other in found):
+            continue
+        refined = refine(search.system, attempt.q, search.typical)
+        if not refined.settled or refined.residual > REFINED_RESIDUAL_LIMIT:
+            continue
+        other = search.unwound(np.array([float(v.mid()) for v in refined.values]))
+        if not any(search.same(other, known) for known in found):
+            found.append(other)
+    return tuple(_named(search, other) for other in found[1:])
+
+
+def _undetermined(search: _Search, attempt: Attempt, loose: tuple[str, ...]) -> NoPoint:
+    return NoPoint(
+        plant=search.system.plant,
+        constants=search.system.constants,
+        conditions=search.system.conditions,
+        reason="undetermined",
+        why=f"the conditions leave {', '.join(loose)} undetermined; hold one of them (or another "
+        "quantity that fixes it)",
+        undetermined=loose,
+        closest=_named(search, attempt.q),
+        residual=attempt.residual,
     )
 
 

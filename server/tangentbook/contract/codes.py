@@ -49,6 +49,7 @@ CHECKS: dict[str, str] = {
     "jacobian.symbolic": "every partial derivative against those of the symbolic library",
     "model.remainder": "remainder of the model against half the bound of the second derivative",
     "eigenvalues.second-route": "eigenvalues against characteristic polynomial or second basis",
+    "printed.units": "printed numbers read in again with their units, against the computed ones",
     "printed.bound": "entries printed as 0 whose value is only known to a bound",
 }
 

@@ -119,6 +119,9 @@ class PointResult(Model):
     values: dict[str, Value] | None = None
     rates: dict[str, Value] | None = None
     closest: dict[str, Value] | None = None
+    residual: float | None = Field(
+        default=None, description="of the closest approach, relative to the size of its row"
+    )
     conditioning: float | None = None
     sensitivity: dict[str, dict[str, float]] | None = Field(
         default=None, description="dx0/dp: found name -> parameter -> derivative, declared units"

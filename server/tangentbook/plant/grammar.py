@@ -374,7 +374,7 @@ class _Parser:
         self._binary(_COMPARISONS[operator.text], operator)
 
 
-_NUMBER = re.compile(r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?(?![\w.*/^(+-])")
+_NUMBER = re.compile(r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?(?![\w.*/^(+\[-])")
 
 
 def _lenient_tokens(text: str, where: str) -> list[Token]:
@@ -385,10 +385,7 @@ def _lenient_tokens(text: str, where: str) -> list[Token]:
         # cut at the first space, where "number unit" splits, or behind the number of "20°C"
         lead = len(text) - len(text.lstrip())
         number = _NUMBER.match(text, lead)
-        space = text.find(" ", lead)
-        if number is None or text[number.end() : space] == "":
-            cut = space if space >= 0 else len(text)
-        else:
-            cut = number.end()
+        cut = number.end() if number is not None else text.find(" ", lead)
+        cut = cut if cut >= 0 else len(text)
         tokens = tokenize(text[:cut], where)
         return [*tokens[:-1], Token("rest", text[cut:].strip(), cut), Token("end", "", len(text))]

@@ -132,7 +132,7 @@ class Plant:
         (node,) = self.graph.substitute([node], swap) if swap else [node]
         known = {*self.states, *self.inputs, *self.algebraic, *self.parameters, *self.unknowns, "t"}
         for leaf in sorted(self.graph.leaves([node]) - known):
-            raise self.scope.undeclared(leaf, where)
+            raise self.scope.undeclared(leaf, where, also=named)
         return node
 
     def unit_of(self, name: str) -> Unit | None:

@@ -11,6 +11,8 @@ from tangentbook.plant.lower import Lowering
 from tangentbook.plant.program import FUNCTIONS, RESERVED, EquationProgram, Program, names_in
 
 if TYPE_CHECKING:
+    from collections.abc import Iterable
+
     from tangentbook.calculus.graph import Graph, Node
     from tangentbook.plant.source import PlantText
 
@@ -252,9 +254,9 @@ class Scope:
         base = name[1:] if name.startswith("d") else ""
         return base if base in known or "dt" in self.first_seen else ""
 
-    def undeclared(self, name: str, place: str) -> ExpressionError:
+    def undeclared(self, name: str, place: str, *, also: Iterable[str] = ()) -> ExpressionError:
         """The error for a name that no declaration and no equation explains."""
-        known = [*self.roles, *self.definitions, *self._primed()]
+        known = [*self.roles, *self.definitions, *self._primed(), *also]
         hint = nearest(name, known)
         rate_of = self._meant_as_rate(name, known)
         if rate_of:

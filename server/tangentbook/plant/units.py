@@ -117,10 +117,48 @@ _OWN_BY_NAME = {
 }
 
 # for hints: what engineers write most, to be found in spite of wrong capitals
-_USUAL = (
-    "kg g t m mm cm km s ms min h d N kN MN Pa kPa MPa bar J kJ MJ W kW MW V kV A mA ohm F uF H mH "
-    "T Wb K mol kmol L"
-).split()
+_USUAL = [
+    "kg",
+    "g",
+    "t",
+    "m",
+    "mm",
+    "cm",
+    "km",
+    "s",
+    "ms",
+    "min",
+    "h",
+    "d",
+    "N",
+    "kN",
+    "MN",
+    "Pa",
+    "kPa",
+    "MPa",
+    "bar",
+    "J",
+    "kJ",
+    "MJ",
+    "W",
+    "kW",
+    "MW",
+    "V",
+    "kV",
+    "A",
+    "mA",
+    "ohm",
+    "F",
+    "uF",
+    "H",
+    "mH",
+    "T",
+    "Wb",
+    "K",
+    "mol",
+    "kmol",
+    "L",
+]
 
 _BASES = {
     "gram": "kg",

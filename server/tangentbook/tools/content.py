@@ -49,9 +49,9 @@ class Findings:
             )
 
     def confirmed(self, codes: tuple[str, ...], *, point: str) -> bool:
-        """Whether all these checks were made at the point and hold."""
+        """Whether all these checks were made at the point, and every one made there holds."""
         made = {c["code"]: c["holds"] for c in self.checks if c["point"] == point}
-        return all(made.get(code, False) for code in codes)
+        return all(made.values()) and set(codes) <= made.keys()
 
     def missing(self, code: str, why: str, *, point: str) -> None:
         """Record that a check could not be made."""

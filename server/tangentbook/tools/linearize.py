@@ -130,7 +130,7 @@ class _Work:
         self.sections += point_section(located)
         self.lines.append(point_line(located, self.scales))
         if isinstance(located.found, NoPoint):
-            self.answers.append(answer_line(located, self.scales))
+            self.answers.append(answer_line(located, self.scales, self.findings))
             return
         found = linearize(located.found, gain=self.gain)
         ident = located.entry["id"]
@@ -179,7 +179,7 @@ class _Work:
         ]
         if stability is not None:
             located.entry["stability"] = stability
-            eigenvalue_cautions(stability, findings, ident, time)
+            eigenvalue_cautions(found, self.scales, findings, ident)
             self.sections += [heading(3, "Eigenvalues"), *eigenvalue_table(stability, time)]
         confirmed = findings.confirmed(_CONFIRMING, point=ident)
         self.answers.append(_answer(located, model, stability, confirmed=confirmed))

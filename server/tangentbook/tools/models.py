@@ -10,11 +10,13 @@ from flint import arb
 
 from tangentbook.analysis.settings import (
     EIGENVALUE_LIMIT,
+    PRINTED_UNITS_LIMIT,
     PRINTED_ZERO_LIMIT,
     REMAINDER_LIMIT,
     SECOND_ROUTE_LIMIT,
 )
-from tangentbook.tools.numbers import plural, rounded
+from tangentbook.tools.numbers import plural, rounded, shown
+from tangentbook.tools.reread import reread_difference
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -203,6 +205,11 @@ def model_checks(
         findings.check(
             "eigenvalues.second-route", found.spectrum.disagreement, EIGENVALUE_LIMIT, point=ident
         )
+    if len(model.states) <= DENSE_STATES:
+        again, place = reread_difference(model)
+        beyond = again > PRINTED_UNITS_LIMIT
+        note = f"largest at {place}" if beyond else ""
+        findings.check("printed.units", again, PRINTED_UNITS_LIMIT, point=ident, note=note)
     zero = _printed_zero(model)
     if zero > 0:
         findings.check("printed.bound", zero, PRINTED_ZERO_LIMIT, point=ident)
@@ -221,26 +228,29 @@ def _printed_zero(model: DeclaredModel) -> float:
     return worst
 
 
-def eigenvalue_cautions(stability: JSON, findings: Findings, ident: str, time: str) -> None:
-    """What the eigenvalues alone already call for."""
+def eigenvalue_cautions(
+    found: Linearization, scales: Scales, findings: Findings, ident: str
+) -> None:
+    """What the eigenvalues alone already call for (sides by their full digits, not as printed)."""
+    if found.spectrum is None:
+        return
+    values = found.spectrum.eigenvalues
+    time = scales.plant.time.text
     per = "" if time in ("1", "-") else f" per {time}"
-    right = [e for e in stability["eigenvalues"] if e["re"] > e["radius"]]
-    near = [e for e in stability["eigenvalues"] if abs(e["re"]) <= e["radius"]]
+    right = [e for e in values if float(e.value.real.mid()) > e.radius]
+    near = [e for e in values if abs(float(e.value.real.mid())) <= e.radius]
     if right:
+        rightmost = shown((right[0].value.real * scales.clock).mid())
         findings.caution(
             "eigenvalue-right",
             [],
-            f"{ident}: {_count(right)} with positive real part, the rightmost "
-            f"{right[0]['re']:.6g}{per}: with inputs held, deviations grow.",
+            f"{ident}: {plural(len(right), 'eigenvalue')} with positive real part, the rightmost "
+            f"{rightmost}{per}: with inputs held, deviations grow.",
         )
     if near:
         findings.caution(
             "eigenvalue-near-axis",
             [],
-            f"{ident}: {_count(near)} with a real part that is zero or too close to zero to tell "
-            "its side: the linear model alone cannot decide stability.",
+            f"{ident}: {plural(len(near), 'eigenvalue')} with a real part that is zero or too "
+            "close to zero to tell its side: the linear model alone cannot decide stability.",
         )
-
-
-def _count(eigenvalues: Sequence[JSON]) -> str:
-    return plural(sum(e["count"] for e in eigenvalues), "eigenvalue")

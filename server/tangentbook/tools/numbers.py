@@ -29,14 +29,14 @@ def shown_float(value: float, digits: int = PEOPLE_DIGITS) -> str:
 
 
 def bound(value: float, floor: float) -> float:
-    """A check value: the next power of ten up, at least `floor` (0 stays 0).
+    """A check value: the next power of ten up, at least `floor`.
 
     Below the floor the value is rounding, which differs between machines and says nothing.
     """
     if not math.isfinite(value):
         return 1e300
-    if value <= 0:
-        return 0
+    if value <= floor:
+        return floor
     exponent = math.ceil(math.log10(value) - 1e-12)
     return max(float(f"1e{exponent}"), floor)
 

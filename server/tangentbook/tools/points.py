@@ -215,12 +215,14 @@ def no_point_result(missing: NoPoint, scales: Scales, *, place: tuple[int, str, 
         entry["blocking"] = list(missing.blocking)
     if missing.undetermined:
         entry["undetermined"] = list(missing.undetermined)
+    if missing.residual is not None:
+        entry["residual"] = float(f"{missing.residual:.1e}")
     if missing.closest:
         entry["closest"] = {
             n: {
                 "value": rounded(scales.value(n, arb(v)), 6),
                 "unit": scales.text(n),
-                "known": "measured",
+                "known": "exact" if n in missing.conditions.fixed else "measured",
             }
             for n, v in missing.closest.items()
         }

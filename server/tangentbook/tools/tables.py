@@ -57,7 +57,10 @@ def closest_table(entry: JSON) -> list[Block]:
         for name, value in entry["closest"].items()
     ]
     return [
-        para("Closest approach (not an operating point):"),
+        para(
+            "Closest approach (not an operating point; largest residual relative to its row "
+            f"{entry.get('residual', 0):.1g}):"
+        ),
         table(["Quantity", "Value", "Unit"], rows, align="lrl"),
     ]
 

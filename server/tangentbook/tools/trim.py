@@ -23,7 +23,7 @@ from tangentbook_reports import Code, heading, para, table
 
 if TYPE_CHECKING:
     from tangentbook.contract.requests import Trim
-    from tangentbook.tools.content import JSON
+    from tangentbook.tools.content import JSON, Findings
     from tangentbook.tools.located import Located
     from tangentbook.tools.scales import Scales
     from tangentbook_reports import Block
@@ -40,7 +40,7 @@ def run(request: Trim) -> Content:
         if isinstance(located.found, OperatingPoint):
             sections += _sensitivity(located, scales)
     entries = [p.entry for p in points]
-    answer = " ".join(answer_line(p, scales) for p in points)
+    answer = " ".join(answer_line(p, scales, findings) for p in points)
     derivation: list[Block] = []
     if len(plant.states) <= FULL_STATES:
         derivation = [heading(2, "Derivation"), *normal_form(plant)]
@@ -75,7 +75,7 @@ def tolerances(model: Any) -> JSON:  # noqa: ANN401 - the plant of the request
     }
 
 
-def answer_line(located: Located, scales: Scales) -> str:
+def answer_line(located: Located, scales: Scales, findings: Findings) -> str:
     """The answer about one point, with its scope."""
     if isinstance(located.found, NoPoint):
         return no_point_line(located) + "."
@@ -83,10 +83,10 @@ def answer_line(located: Located, scales: Scales) -> str:
     free = list(point.conditions.free)[:4]
     values = ", ".join(quantity(scales, n, point.values[n]) for n in free)
     found = f" at {values}" if values else ""
-    return (
-        f"{located.title}: the equations as stated are at rest{found}; computed twice, not shown "
-        "to be the only such point."
-    )
+    how = "computed twice, not shown to be the only such point"
+    if not findings.confirmed(("point.residual",), point=located.entry["id"]):
+        how = "BUT THIS IS NOT CONFIRMED: see the check values and cautions"
+    return f"{located.title}: the equations as stated are at rest{found}; {how}."
 
 
 def _sensitivity(located: Located, scales: Scales) -> list[Block]:

@@ -1,3 +1,5 @@
+# pyright: reportUnknownLambdaType=false, reportUnknownArgumentType=false
+# (tables of one-line operations on numbers of libraries without annotations)
 """Random expressions as recipes, built three ways: graph, high-precision numbers, symbols.
 
 A recipe is a nested tuple: ("var", "x"), ("const", Fraction), ("pi",), ("ipow", recipe, n),
@@ -9,7 +11,7 @@ from __future__ import annotations
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any
 
-import mpmath as mp
+import mpmath
 import sympy
 from flint import arb, fmpq
 from hypothesis import HealthCheck, settings
@@ -19,6 +21,10 @@ from tangentbook.calculus import DomainError, Function, Graph, Node
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
+
+# neither library is annotated
+mp: Any = mpmath
+sp: Any = sympy
 
 Recipe = tuple[Any, ...]
 Point = tuple[Fraction, ...]
@@ -40,8 +46,24 @@ steady = settings(
     suppress_health_check=[HealthCheck.filter_too_much, HealthCheck.too_slow],
 )
 
-UNARY = ["neg", "sin", "cos", "tan", "asin", "acos", "atan", "sinh", "cosh", "tanh"]
-UNARY += ["exp", "log", "log10", "sqrt", "abs", "sign"]
+UNARY = [
+    "neg",
+    "sin",
+    "cos",
+    "tan",
+    "asin",
+    "acos",
+    "atan",
+    "sinh",
+    "cosh",
+    "tanh",
+    "exp",
+    "log",
+    "log10",
+    "sqrt",
+    "abs",
+    "sign",
+]
 BINARY = ["add", "sub", "mul", "div", "pow", "atan2", "min", "max"]
 COMPARED = ["lt", "le", "eq", "ne"]
 
@@ -134,24 +156,24 @@ def precise(recipe: Recipe, point: Mapping[str, Any]) -> Any:  # noqa: ANN401 - 
     return _PRECISE[op](*(precise(part, point) for part in recipe[1:]))
 
 
-SYMBOLS = {name: sympy.Symbol(name, real=True) for name in NAMES}
+SYMBOLS = {name: sp.Symbol(name, real=True) for name in NAMES}
 
 _SYMBOLIC: dict[str, Callable[..., Any]] = {
     **_PRECISE,
-    **{name: getattr(sympy, name) for name in UNARY if hasattr(sympy, name)},
-    "log10": lambda a: sympy.log(a) / sympy.log(10),
-    "abs": sympy.Abs,
-    "atan2": sympy.atan2,
-    "min": sympy.Min,
-    "max": sympy.Max,
-    "lt": sympy.Lt,
-    "le": sympy.Le,
-    "eq": sympy.Eq,
-    "ne": sympy.Ne,
-    "not": sympy.Not,
-    "and": sympy.And,
-    "or": sympy.Or,
-    "if": lambda c, a, b: sympy.Piecewise((a, c), (b, True)),
+    **{name: getattr(sp, name) for name in UNARY if hasattr(sp, name)},
+    "log10": lambda a: sp.log(a) / sp.log(10),
+    "abs": sp.Abs,
+    "atan2": sp.atan2,
+    "min": sp.Min,
+    "max": sp.Max,
+    "lt": sp.Lt,
+    "le": sp.Le,
+    "eq": sp.Eq,
+    "ne": sp.Ne,
+    "not": sp.Not,
+    "and": sp.And,
+    "or": sp.Or,
+    "if": lambda c, a, b: sp.Piecewise((a, c), (b, True)),
 }
 
 
@@ -161,9 +183,9 @@ def symbolic(recipe: Recipe) -> Any:  # noqa: ANN401 - the library's own types
     if op == "var":
         return SYMBOLS[recipe[1]]
     if op == "const":
-        return sympy.Rational(recipe[1].numerator, recipe[1].denominator)
+        return sp.Rational(recipe[1].numerator, recipe[1].denominator)
     if op == "pi":
-        return sympy.pi
+        return sp.pi
     if op == "ipow":
         return symbolic(recipe[1]) ** recipe[2]
     return _SYMBOLIC[op](*(symbolic(part) for part in recipe[1:]))

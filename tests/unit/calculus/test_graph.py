@@ -163,7 +163,7 @@ def test_signs_move_outwards(graph: Graph) -> None:
 
 
 def test_a_sum_of_20000_terms_needs_no_recursion(graph: Graph) -> None:
-    """Walks, derivatives, evaluation and typesetting of a deep chain stay within the usual stack."""
+    """Walks, derivatives, evaluation and typesetting of a deep chain stay within the stack."""
     count = 20_000
     assert count > sys.getrecursionlimit()
     x = graph.var("x")

@@ -13,7 +13,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from tangentbook.calculus import Graph, plain_text
-from tangentbook.errors import ExpressionError, TangentbookError
+from tangentbook.errors import ExpressionError
 from tangentbook.plant.grammar import parse_equation, parse_expression, parse_leading
 from tangentbook.plant.tokens import MAX_LENGTH
 from unit.plant.plants import node_of, number, plant, refused
@@ -151,7 +151,7 @@ def _spread(text: str) -> list[str]:
     for k, character in enumerate(text):
         exponent = character.isdigit() and text[max(k - 2, 0) : k] == "**"
         pieces.append(f"int({character})" if exponent else character)
-    return [p if len(p) > 1 else p for p in pieces]
+    return pieces
 
 
 @pytest.mark.parametrize(
@@ -211,7 +211,10 @@ def test_arithmetic(text: str, value: str) -> None:
         ("clip(x, 0, 1)", "min(max(x, 0), 1)"),
         ("if(x > y, 1, 2)", "if(y < x, 1, 2)"),
         ("if(x >= y, 1, 2)", "if(y <= x, 1, 2)"),
-        ("if(not (x < y or y < z) and x == z, 1, 2)", "if((not (x < y or y < z)) and x == z, 1, 2)"),
+        (
+            "if(not (x < y or y < z) and x == z, 1, 2)",
+            "if((not (x < y or y < z)) and x == z, 1, 2)",
+        ),
         ("if(((x + 1))*2 < y, 1, 2)", "if((x + 1)*2 < y, 1, 2)"),
     ],
 )
@@ -225,7 +228,31 @@ def test_two_spellings_of_one_thing(alias: str, name: str) -> None:
     assert printed(alias) == printed(name)
 
 
-ORDINARY = "e i j d I E S N O Q beta gamma zeta lambda re im oo nan inf Symbol None True del".split()
+ORDINARY = [
+    "e",
+    "i",
+    "j",
+    "d",
+    "I",
+    "E",
+    "S",
+    "N",
+    "O",
+    "Q",
+    "beta",
+    "gamma",
+    "zeta",
+    "lambda",
+    "re",
+    "im",
+    "oo",
+    "nan",
+    "inf",
+    "Symbol",
+    "None",
+    "True",
+    "del",
+]
 
 
 @pytest.mark.parametrize("name", ORDINARY)
@@ -247,7 +274,7 @@ def test_a_reserved_word_is_no_name(name: str) -> None:
 
 
 HOST = [name for name in dir(builtins) if not name.startswith("_")]
-HOST += ["__import__", "__builtins__", "__class__", "os", "sys", "np", "f_sin", "generated", "c"]
+OTHERS = ["__import__", "__builtins__", "__class__", "os", "sys", "np", "f_sin", "generated", "c"]
 
 
 def test_no_name_reaches_the_host_language(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -257,10 +284,9 @@ def test_no_name_reaches_the_host_language(monkeypatch: pytest.MonkeyPatch) -> N
         raise AssertionError("an evaluator was called")
 
     with monkeypatch.context() as patched:
-        for evaluator in ("eval", "exec", "compile", "__import__", "open", "getattr"):
-            if evaluator in ("eval", "exec", "compile"):
-                patched.setattr(builtins, evaluator, forbidden)
-        for name in HOST:
+        for evaluator in ("eval", "exec", "compile"):
+            patched.setattr(builtins, evaluator, forbidden)
+        for name in (*HOST, *OTHERS):
             if name in ("abs", "min", "max"):
                 continue
             with pytest.raises(ExpressionError) as call:
@@ -320,9 +346,5 @@ def test_a_value_splits_before_its_unit() -> None:
 @given(text=st.text(alphabet="xyk0159.+-*/^()<>=!'′,[] ifandortmin\ud800é²π;", max_size=40))
 def test_any_text_is_read_or_refused(text: str) -> None:
     """No text whatever ends in anything but a plant or an error with code, place and hint."""
-    try:
-        plant(f"x' = {text}", parameters={"k": 2, "y": 1})
-    except TangentbookError as error:
-        assert error.code
-        assert error.where
-        assert error.hint
+    found = refused(lambda: plant(f"x' = {text}", parameters={"k": 2, "y": 1}))
+    assert all(found.values())

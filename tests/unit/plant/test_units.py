@@ -229,7 +229,16 @@ def test_refusals(text: str, problem: str, hint: str) -> None:
 
 @pytest.mark.parametrize(
     "text",
-    ["m" * 10_000, "(" * 60, "m^99 " * 24, "\ud800", "m\x00", "__class__", "m;import", "(" * 118 + "m"],
+    [
+        "m" * 10_000,
+        "(" * 60,
+        "m^99 " * 24,
+        "\ud800",
+        "m\x00",
+        "__class__",
+        "m;import",
+        "(" * 118 + "m",
+    ],
 )
 def test_hostile_units_are_refused_at_once(text: str) -> None:
     """Length, nesting and odd characters cost nothing."""

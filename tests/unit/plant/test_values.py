@@ -45,6 +45,7 @@ def read(value: Scalar, unit: str | None = None) -> tuple[Graph, int, Unit | Non
         ("-20.5e1°C", None, "1363/20"),
         (" 20% ", None, "1/5"),
         ("3*2 m²", None, "6"),
+        ("20%", None, "1/5"),
         ("3[m]*2 m²", None, "6"),
         ("-40 degF", None, "23315/100"),
         ("64.94[1/min]", None, "3247/3000"),
@@ -79,7 +80,7 @@ def test_rational_values(value: Scalar, unit: str | None, exact: str) -> None:
     ],
 )
 def test_irrational_values(value: Scalar, unit: str | None, printed: str) -> None:
-    """pi and roots stay exact: the value is right to as many digits as are asked for."""
+    """Pi and roots stay exact: the value is right to as many digits as are asked for."""
     graph, node, _ = read(value, unit)
     with ctx.workprec(200):
         (found,) = Function(graph, [], [node]).balls([])
