@@ -106,7 +106,7 @@ def _matrix(model: LinearModel, block: Sequence[str]) -> arb_mat:
 
 def _precise(matrix: arb_mat) -> tuple[list[Eigenvalue], float]:
     """High-precision QR iteration, confirmed by the characteristic polynomial."""
-    size = matrix.nrows()
+    matrix.nrows()
     precision = ctx.prec
     ctx.prec = PRECISION * _EXTRA_BITS // 4
     try:

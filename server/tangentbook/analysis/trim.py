@@ -18,7 +18,7 @@ from tangentbook.analysis import rank
 from tangentbook.analysis.conditions import Conditions, PointText, understand_point
 from tangentbook.analysis.constants import Constants
 from tangentbook.analysis.newton import Attempt, descend, solve
-from tangentbook.analysis.refine import refine
+from tangentbook.analysis.refine import Refined, refine
 from tangentbook.analysis.settings import (
     OTHER_POINTS,
     PRECISION,
@@ -105,8 +105,12 @@ def _found(plant: Plant, constants: Constants, conditions: Conditions) -> Operat
     solved = [a for a in attempts if a.solved]
     if not solved:
         return _no_point(search, attempts)
-    chosen = search.nearest(solved)
-    return _point(search, chosen, solved)
+    for chosen in search.by_nearness(solved):
+        refined = refine(system, chosen.q, search.typical)
+        limit = REFINED_RESIDUAL_LIMIT if refined.settled else RESIDUAL_LIMIT
+        if refined.residual <= limit:
+            return _point(search, chosen, refined, solved)
+    return _no_point(search, attempts)
 
 
 class _Search:
@@ -159,12 +163,12 @@ class _Search:
         )
         return found + [attempt for attempt in slow if attempt is not None]
 
-    def nearest(self, solved: Sequence[Attempt]) -> Attempt:
-        """The solution nearest to the guess, else the first."""
+    def by_nearness(self, solved: Sequence[Attempt]) -> Sequence[Attempt]:
+        """The solutions by their distance from the guess, else in the order of the starts."""
         guessed = ~np.isnan(self.guess)
         if not guessed.any():
-            return solved[0]
-        return min(
+            return solved
+        return sorted(
             solved,
             key=lambda a: float(np.linalg.norm(((a.q - self.guess) / self.typical)[guessed])),
         )
@@ -192,12 +196,10 @@ class _Search:
         return bool(np.all(difference <= SAME_POINT * scale))
 
 
-def _point(search: _Search, chosen: Attempt, solved: Sequence[Attempt]) -> OperatingPoint | NoPoint:
+def _point(
+    search: _Search, chosen: Attempt, refined: Refined, solved: Sequence[Attempt]
+) -> OperatingPoint | NoPoint:
     system = search.system
-    refined = refine(system, chosen.q, search.typical)
-    limit = REFINED_RESIDUAL_LIMIT if refined.settled else RESIDUAL_LIMIT
-    if refined.residual > limit:
-        return _no_point(search, [chosen])
     q = np.array([float(v.mid()) for v in refined.values])
     bounds = (search.low, search.high)
     freedom = rank.freedom(system, q, search.typical, *bounds)
