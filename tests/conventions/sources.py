@@ -29,7 +29,7 @@ class Module:
 
     @property
     def part(self) -> str:
-        """The package or top-level module it belongs to: "plant", "cli", …"""
+        """The package ("plant") or top-level module ("cli") it belongs to."""
         return self.name.partition(".")[2].partition(".")[0] or "__init__"
 
 

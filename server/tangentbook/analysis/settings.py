@@ -61,7 +61,7 @@ SECOND_ROUTE_LIMIT = 1e-9
 REMAINDER_LIMIT = 1e-9
 POINT_LIMIT = 1e-9
 EIGENVALUE_LIMIT = 1e-9
-PRINTED_UNITS_LIMIT = 1e-9
+PRINTED_UNITS_LIMIT = 1e-8
 PRINTED_ZERO_LIMIT = 1e-12
 """Limits of the check values: well below the 1e-4 that a wrong entry shows, well above the error
 of two correct routes."""

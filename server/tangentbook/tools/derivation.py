@@ -88,8 +88,9 @@ def _block(
         return [para(f"from {where}:"), *formulas]
     return [
         para(
-            f"{where} determine {', '.join(unknowns)} together, not in closed form; their "
-            "derivatives follow by implicit differentiation, ",
+            f"{where} fix{'es' if len(equations) == 1 else ''} {', '.join(unknowns)}"
+            f"{' together' if len(unknowns) > 1 else ''}, not in closed form; the derivatives "
+            "follow by implicit differentiation, ",
             Math(r"\mathrm{d}w = -F_w^{-1} (F_x\,\mathrm{d}x + F_u\,\mathrm{d}u)"),
             ".",
         )
