@@ -85,7 +85,18 @@ def _sum(graph: Graph, op: str, left: Gradient, right: Gradient) -> Gradient:
 def _scaled(graph: Graph, factor: Node, gradient: Gradient) -> Gradient:
     if graph.is_zero(factor):
         return {}
-    return {name: graph.mul(factor, d) for name, d in gradient.items()}
+    return {name: _product(graph, factor, d) for name, d in gradient.items()}
+
+
+def _product(graph: Graph, factor: Node, slope: Node) -> Node:
+    """factor * slope with a number in front, as people write it."""
+    if graph.value_of(slope) is not None:
+        return graph.mul(slope, factor)
+    if graph.op[slope] == "mul":
+        first, rest = graph.children(slope)
+        if graph.value_of(first) is not None:
+            return graph.mul(first, graph.mul(factor, rest))
+    return graph.mul(factor, slope)
 
 
 def _selected(graph: Graph, node: Node, found: dict[Node, Gradient]) -> Gradient:
@@ -120,7 +131,7 @@ Partials = tuple[int, int]
 
 
 # one signature for all rules: graph, node, its two arguments, whether the second one varies
-def _product(_g: Graph, _node: Node, a: Node, b: Node, _moves: bool) -> Partials:  # noqa: FBT001 - as said above
+def _factors(_g: Graph, _node: Node, a: Node, b: Node, _moves: bool) -> Partials:  # noqa: FBT001 - as said above
     return b, a
 
 
@@ -139,7 +150,7 @@ def _angle(g: Graph, _node: Node, y: Node, x: Node, _moves: bool) -> Partials:  
 
 
 _PARTIALS: dict[str, Callable[[Graph, int, int, int, bool], Partials]] = {
-    "mul": _product,
+    "mul": _factors,
     "div": _quotient,
     "pow": _general_power,
     "atan2": _angle,

@@ -28,6 +28,9 @@ if TYPE_CHECKING:
 FloatArray: TypeAlias = npt.NDArray[np.float64]
 
 _INFIX = {"add": "+", "sub": "-", "mul": "*", "div": "/"}
+# what is used once is written where it is used: fewer statements to compile and fewer stores to
+# run; nested brackets stay far below the limit of the compiler
+MAX_NESTING = 12
 _COMPARE = {"lt": "<", "le": "<=", "eq": "==", "ne": "!="}
 
 
@@ -113,18 +116,29 @@ class Function:
         lines = ["def generated(x, c=()):"]
         position = {name: k for k, name in enumerate(self.names)}
         switched = {node: len(self.names) + k for k, node in enumerate(self.switches)}
+        needed = self._needed(switched)
+        uses = self._uses(needed, switched)
+        texts: dict[Node, str] = {}
+        depths: dict[Node, int] = {}
         constants = 0
-        for node in self._needed(switched):
-            value = self.graph.value_of(node)
+        for node in needed:
             if node in switched:
-                text = f"x[{switched[node]}]"
-            elif value is not None:
+                texts[node] = f"x[{switched[node]}]"
+            elif (value := self.graph.value_of(node)) is not None:
                 constants += 1
-                text = dialect.constant(value, constants)
+                texts[node] = dialect.constant(value, constants)
             else:
-                text = self._statement(node, position, dialect)
-            lines.append(f" v{node}={text}")
-        outputs = "".join(f"v{node}," for node in self.outputs)
+                text = self._statement(node, position, dialect, texts)
+                depth = 1
+                for child in self.graph.children(node):
+                    if child in depths and depths[child] >= depth:
+                        depth = depths[child] + 1
+                if uses[node] == 1 and depth <= MAX_NESTING:
+                    texts[node], depths[node] = f"({text})", depth
+                else:
+                    lines.append(f" v{node}={text}")
+                    texts[node] = f"v{node}"
+        outputs = "".join(f"{texts[node]}," for node in self.outputs)
         lines.append(f" return [{outputs}]")
         namespace: dict[str, Any] = {
             f"f_{name}": function for name, function in dialect.functions.items()
@@ -132,6 +146,18 @@ class Function:
         namespace["np"] = np
         exec(compile("\n".join(lines), "<generated>", "exec"), namespace)  # noqa: S102 - own text only, see module docstring
         return namespace["generated"]
+
+    def _uses(self, needed: Sequence[Node], switched: Mapping[int, int]) -> dict[Node, int]:
+        """How often each node is written; the base of a power is repeated, so it counts twice."""
+        uses = dict.fromkeys(needed, 0)
+        for node in needed:
+            if node not in switched:
+                times = 2 if self.graph.op[node] == "ipow" else 1
+                for child in self.graph.children(node):
+                    uses[child] += times
+        for node in self.outputs:
+            uses[node] += 1
+        return uses
 
     def _needed(self, switched: Mapping[int, int]) -> list[Node]:
         seen: set[Node] = set()
@@ -144,13 +170,19 @@ class Function:
                     stack.extend(self.graph.children(node))
         return sorted(seen)
 
-    def _statement(self, node: Node, position: Mapping[str, int], dialect: _Dialect) -> str:
+    def _statement(
+        self,
+        node: Node,
+        position: Mapping[str, int],
+        dialect: _Dialect,
+        texts: Mapping[Node, str],
+    ) -> str:
         op = self.graph.op[node]
         if op == "var":
             return f"x[{position[str(self.graph.args[node][0])]}]"
         if op == "pi":
             return dialect.pi
-        args = [f"v{child}" for child in self.graph.children(node)]
+        args = [texts[child] for child in self.graph.children(node)]
         if op == "ipow":
             return dialect.integer_power(args[0], self.graph.exponent(node))
         return dialect.operation(op, args)
@@ -167,9 +199,10 @@ class _Dialect:
     def constant(self, value: fmpq, _index: int) -> str:
         # the quotient of two integers is correctly rounded
         try:
-            return repr(int(value.p) / int(value.q))
+            number = repr(int(value.p) / int(value.q))
         except OverflowError:
             return "float('inf')"
+        return f"({number})" if number.startswith("-") else number
 
     def operation(self, op: str, args: list[str]) -> str:
         if op in _INFIX:

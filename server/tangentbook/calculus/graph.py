@@ -274,15 +274,8 @@ class Graph:
 
     def binary(self, op: str, a: Node, b: Node) -> Node:
         """A two-place operation, by its name."""
-        arithmetic: dict[str, Callable[[Node, Node], Node]] = {
-            "add": self.add,
-            "sub": self.sub,
-            "mul": self.mul,
-            "div": self.div,
-            "pow": self.power,
-        }
-        method = arithmetic.get(op)
-        return method(a, b) if method is not None else self._node(op, a, b)
+        method = _ARITHMETIC.get(op)
+        return method(self, a, b) if method is not None else self._node(op, a, b)
 
     def choose(self, condition: Node, a: Node, b: Node) -> Node:
         """`a` where the condition holds, else `b`."""
@@ -294,11 +287,12 @@ class Graph:
         """All nodes the roots are made of, in an order of evaluation."""
         seen: set[Node] = set()
         stack = list(roots)
+        children = self.children
         while stack:
             node = stack.pop()
             if node not in seen:
                 seen.add(node)
-                stack.extend(self.children(node))
+                stack.extend(children(node))
         return sorted(seen)
 
     def leaves(self, roots: Iterable[Node]) -> set[str]:
@@ -344,3 +338,12 @@ class Graph:
             else:
                 found.append(current)
         return found
+
+
+_ARITHMETIC: dict[str, Callable[[Graph, Node, Node], Node]] = {
+    "add": Graph.add,
+    "sub": Graph.sub,
+    "mul": Graph.mul,
+    "div": Graph.div,
+    "pow": Graph.power,
+}

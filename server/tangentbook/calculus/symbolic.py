@@ -12,6 +12,7 @@ import math
 import operator
 from typing import TYPE_CHECKING, Any
 
+import mpmath
 import sympy
 from flint import arb
 
@@ -41,29 +42,53 @@ def differ(
         ours: the value of every derivative node at the point.
     """
     expressions, symbols = expressions_of(graph, roots)
-    point = {symbol: _decimal(values[name]) for name, symbol in symbols.items() if name in values}
-    worst, where = 0.0, ""
+    point = {symbol: values[name] for name, symbol in symbols.items() if name in values}
+    places: list[tuple[str, Node, float]] = []
+    derivatives: list[Any] = []
     for expression, row in zip(expressions, rows, strict=True):
         names = [n for n in row if n in symbols]
         largest = max((abs(float(ours[row[n]].mid())) for n in names), default=0.0)
-        for name in names:
-            theirs = _value(sympy.diff(expression, symbols[name]), point)
-            mine = ours[row[name]]
-            scale = max(abs(float(mine.mid())), 1e-12 * largest) or 1.0
-            error = abs(float((theirs - mine).mid())) / scale
-            # what the library has no number for is no confirmation: wholly different
-            error = 1.0 if math.isnan(error) else error
-            if error > worst:
-                worst, where = error, name
+        places += [(name, row[name], largest) for name in names]
+        derivatives += [sympy.diff(expression, symbols[name]) for name in names]
+    worst, where = 0.0, ""
+    for (name, node, largest), theirs in zip(places, _values(derivatives, point), strict=True):
+        mine = ours[node]
+        scale = max(abs(float(mine.mid())), 1e-12 * largest) or 1.0
+        error = abs(float((theirs - mine).mid())) / scale
+        # what the library has no number for is no confirmation: wholly different
+        error = 1.0 if math.isnan(error) else error
+        if error > worst:
+            worst, where = error, name
     return worst, where
 
 
-def _decimal(value: arb) -> sympy.Float:
-    return sympy.Float(value.mid().str(DIGITS + 10, radius=False), DIGITS + 10)
+def _values(derivatives: Sequence[sympy.Expr], point: Mapping[Any, arb]) -> list[arb]:
+    """The derivatives at the point; NaN where the library finds no real number.
+
+    Together, as one function with common parts named: putting the point into one expression after
+    the other takes minutes where definitions stand within definitions.
+    """
+    try:
+        function = sympy.lambdify([list(point)], list(derivatives), modules="mpmath", cse=True)
+        with mpmath.workdps(DIGITS + 10):
+            found = function([mpmath.mpf(_digits(value)) for value in point.values()])
+            return [_real(value) for value in found]
+    except (ArithmeticError, NameError, TypeError, ValueError):
+        # an operation the evaluator does not have, or a place without a value: one at a time
+        exact = {symbol: sympy.Float(_digits(v), DIGITS + 10) for symbol, v in point.items()}
+        return [_value(derivative, exact) for derivative in derivatives]
+
+
+def _real(value: Any) -> arb:  # noqa: ANN401 - whatever the library makes of it
+    real = isinstance(value, (int, mpmath.mpf)) and mpmath.isfinite(value)
+    return arb(mpmath.nstr(mpmath.mpf(value), DIGITS)) if real else arb("nan")
+
+
+def _digits(value: arb) -> str:
+    return value.mid().str(DIGITS + 10, radius=False)
 
 
 def _value(derivative: sympy.Expr, point: Mapping[Any, Any]) -> arb:
-    """The derivative at the point; NaN where the library finds no real number."""
     value = derivative.subs(point).evalf(DIGITS)
     return arb(str(value)) if isinstance(value, (sympy.Float, sympy.Integer)) else arb("nan")
 

@@ -158,13 +158,12 @@ def _orders(scope: Scope, equations: Iterable[Equation]) -> dict[str, int]:
     """
     leaves = scope.graph.leaves([e.residual for e in equations])
     found: dict[str, int] = {}
-    for name in [*_order_of_appearance(scope), *sorted(leaves)]:
+    rated = {name.rstrip("'") for name in leaves if name.endswith("'")}
+    for name in dict.fromkeys((*_order_of_appearance(scope), *sorted(leaves))):
         base = name.rstrip("'")
         if len(name) > len(base) and name in leaves:
             found[base] = max(found.get(base, 0), len(name) - len(base))
-        elif scope.roles.get(base) == "state" or (
-            any(n.startswith(base + "'") and not n[len(base) :].strip("'") for n in leaves)
-        ):
+        elif scope.roles.get(base) == "state" or base in rated:
             found.setdefault(base, 0)
     for item in scope.text.states:
         base = item.name.rstrip("'")

@@ -72,10 +72,11 @@ class Lowering:
         return result
 
     def _apply(self, step: Step, stack: list[Node], where: str) -> None:
-        place = f"{where}, column {step.at + 1}"
         if step.op == "number":
             stack.append(self.graph.const(exact_number(step.text)))
-        elif step.op == "unit":
+            return
+        place = f"{where}, column {step.at + 1}"
+        if step.op == "unit":
             stack.append(in_si(self.graph, stack.pop(), parse_unit(step.text, where=place)))
         elif step.op == "pi":
             stack.append(self.graph.pi())

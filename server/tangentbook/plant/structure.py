@@ -51,13 +51,35 @@ def solve_order(
     rows = [[position[name] for name in row] for row in jacobian]
     matched = _match(equations, unknowns, rows)
     order = _components(rows, matched, len(unknowns))
+    moving = _moving(graph, equations, unknowns)
     blocks: list[Block] = []
     for component in order:
         block = tuple(sorted(component))
         columns = tuple(unknowns[matched[row]] for row in block)
+        given = _given(graph, equations[block[0]].residual, columns, moving)
+        if given is not None:
+            blocks.append(Block(equations=block, unknowns=columns, linear=True, solved=(given,)))
+            continue
         _check_rank(graph, equations, block, columns, jacobian)
         blocks.append(_block(graph, equations, block, columns, jacobian))
     return tuple(blocks)
+
+
+def _moving(graph: Graph, equations: Sequence[Equation], unknowns: Sequence[str]) -> set[Node]:
+    """The nodes of the equations that depend on an unknown."""
+    found = {graph.var(name) for name in unknowns}
+    for node in graph.reachable([e.residual for e in equations]):
+        if any(child in found for child in graph.children(node)):
+            found.add(node)
+    return found
+
+
+def _given(graph: Graph, residual: Node, columns: Sequence[str], moving: set[Node]) -> Node | None:
+    """The right side of an equation written as "unknown = expression without unknowns"."""
+    if len(columns) != 1 or graph.op[residual] != "sub":
+        return None
+    left, right = graph.children(residual)
+    return right if graph.name_of(left) == columns[0] and right not in moving else None
 
 
 def _names(names: Sequence[str], limit: int = 8) -> str:

@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, NamedTuple
 
 from tangentbook.errors import ExpressionError
 
@@ -16,8 +15,7 @@ MAX_DECADE = 300
 Kind = Literal["number", "name", "unit", "op", "rest", "end"]
 
 
-@dataclass(frozen=True, slots=True)
-class Token:
+class Token(NamedTuple):
     """One token: `text`, its 0-based column, and the number of primes directly behind it."""
 
     kind: Kind
@@ -67,13 +65,14 @@ def tokenize(text: str, where: str) -> list[Token]:
         at = match.start(kind)
         token = _checked(text, where, kind, match.group(kind), at)
         position = match.end()
-        primes = 0
-        if kind == "name" or token.text == ")":
+        if text[position : position + 1] in _PRIMES and (kind == "name" or token.text == ")"):
+            primes = 0
             while position < len(text) and text[position] in _PRIMES:
                 primes += _PRIMES[text[position]]
                 position += 1
-        tokens.append(Token(token.kind, token.text, at, primes))
-        _refuse_letters_behind_primes(text, where, tokens[-1], position)
+            token = Token(token.kind, token.text, at, primes)
+            _refuse_letters_behind_primes(text, where, token, position)
+        tokens.append(token)
     rest = text[position:]
     if rest.strip():
         at = position + len(rest) - len(rest.lstrip())
