@@ -36,7 +36,8 @@ INSIDE: dict[str, set[str]] = {
 
 # what each part may import of others (the standard library always)
 OUTSIDE: dict[str, set[str]] = {
-    "calculus": {"flint", "numpy", "sympy"},
+    # mpmath comes with sympy
+    "calculus": {"flint", "mpmath", "numpy", "sympy"},
     "plant": {"flint", "numpy", "pint", "scipy"},
     "analysis": {"flint", "numpy", "scipy"},
     "contract": {"pydantic", "pydantic_core"},

@@ -89,7 +89,7 @@ def _scaled(graph: Graph, factor: Node, gradient: Gradient) -> Gradient:
 
 
 def _product(graph: Graph, factor: Node, slope: Node) -> Node:
-    """factor * slope with a number in front, as people write it."""
+    """Factor * slope with a number in front, as people write it."""
     if graph.value_of(slope) is not None:
         return graph.mul(slope, factor)
     if graph.op[slope] == "mul":
