@@ -12,6 +12,9 @@ MAX_DIGITS = 400
 # beyond the range of double precision a literal is a slip, not a quantity
 MAX_DECADE = 300
 
+# plain decimals of this length are inside every limit
+_SURELY_FINE = 40
+
 Kind = Literal["number", "name", "unit", "op", "rest", "end"]
 
 
@@ -99,7 +102,8 @@ def _refuse_letters_behind_primes(text: str, where: str, token: Token, position:
 
 def _checked(text: str, where: str, kind: str, value: str, at: int) -> Token:
     if kind == "number":
-        _check_number(value, where, at)
+        if len(value) > _SURELY_FINE or "e" in value or "E" in value:
+            _check_number(value, where, at)
         return Token("number", value, at)
     if kind == "name":
         if not value.isidentifier():
