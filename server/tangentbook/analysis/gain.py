@@ -53,7 +53,7 @@ def dc_gain(model: LinearModel) -> Gain:
             "(an input that is kept on makes it grow without end)",
         )
     solve = _dense if len(states) <= DENSE_STATES else _refined
-    settled = solve(model)
+    settled = solve(model) if states else [[] for _ in inputs]
     if settled is None:
         return Gain(
             matrix=None,

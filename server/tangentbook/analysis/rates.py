@@ -19,13 +19,14 @@ from tangentbook.calculus.derive import gradients
 from tangentbook.calculus.evaluate import Function
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Iterable, Mapping, Sequence
 
     from tangentbook.calculus.graph import Node
     from tangentbook.plant.model import Block, Plant
 
 NEWTON_PASSES = 40
 WIDENINGS = 8
+_SETTLED = arb(2) ** -200
 
 
 class NoBranchError(ArithmeticError):
@@ -129,16 +130,18 @@ class Rates:
         places = [self._position[name] for name in stage.unknowns]
         inverse = _inverse(stage, [v.mid() for v in values])
         for _ in range(NEWTON_PASSES):
-            residual = arb_mat(size, 1, stage.residual.balls(values))
+            left = stage.residual.balls(values)
+            if all(r.contains(0) for r in left):  # nothing but rounding is left
+                return [values[place] for place in places]
+            residual = arb_mat(size, 1, left)
             step = (inverse * residual).mid()
-            change = 0.0
             for k, place in enumerate(places):
                 values[place] = (values[place] - step[k, 0]).mid()
-                relative = abs(step[k, 0]) / (abs(values[place]) + abs(step[k, 0]) + arb(2) ** -400)
-                change = max(change, float(relative.mid()))
-            if not change == change:  # noqa: PLR0124 - NaN: the iteration left the domain
+            moved = _largest(step[k, 0] for k in range(size))
+            size_now = _largest(values[place] for place in places)
+            if not moved.is_finite():  # the iteration left the domain
                 raise NoBranchError
-            if change < 1e-60:
+            if moved <= size_now * _SETTLED:
                 return [values[place] for place in places]
         raise NoBranchError
 
@@ -231,6 +234,13 @@ class Rates:
             if not all(r.is_finite() for r in radius):
                 break
         raise NoBranchError
+
+
+def _largest(values: Iterable[arb]) -> arb:
+    largest = arb(0)
+    for value in values:
+        largest = largest.max(abs(value))
+    return largest
 
 
 def _inverse(stage: _Implicit, values: Sequence[arb]) -> arb_mat:

@@ -51,6 +51,7 @@ ERRORS: dict[str, str] = {
     "structure.hidden-constraint": "a combination of equations holds no unknown",
     "structure.too-few-equations": "an unknown lacks an equation",
     "structure.too-many-equations": "an equation is left over",
+    "structure.no-unknowns": "the equations hold no rate and no algebraic unknown",
     "structure.state-without-rate": "a declared state has no rate in any equation",
     "structure.improper-output": "an output would contain the rate of an input",
     "structure.size": "too many states",

@@ -44,6 +44,14 @@ def solve_order(
     Raises:
         StructureError: counts do not fit, an unknown lacks an equation, or a hidden constraint.
     """
+    if not unknowns:
+        raise StructureError(
+            "structure.no-unknowns",
+            "the equations hold no rate and no algebraic unknown: an equation with one new name at "
+            "its left is a definition",
+            where="equations",
+            hint="write a rate as x', or list what the equations determine under `algebraic`",
+        )
     jacobian = gradients(graph, [e.residual for e in equations], unknowns)
     _check_presence(graph, equations, jacobian, unknowns)
     _check_count(equations, unknowns, jacobian)

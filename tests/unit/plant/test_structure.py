@@ -61,10 +61,11 @@ CASES: list[tuple[str, list[str], Parts, tuple[str, str, str, str]]] = [
         ["x' = x'"],
         {},
         (
-            "structure.too-many-equations",
-            "equation 1",
-            "1 equation for no unknowns: equation 1 is left over",
-            TOO_MANY,
+            "structure.no-unknowns",
+            "equations",
+            "the equations hold no rate and no algebraic unknown: an equation with one new name at "
+            "its left is a definition",
+            "write a rate as x', or list what the equations determine under `algebraic`",
         ),
     ),
     (
