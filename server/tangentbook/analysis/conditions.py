@@ -11,6 +11,7 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from tangentbook.errors import PointError, nearest
+from tangentbook.plant.lower import in_si
 from tangentbook.plant.units import ONE
 from tangentbook.plant.values import read_value
 
@@ -106,7 +107,7 @@ def _check_names(plant: Plant, text: PointText, columns: tuple[str, ...]) -> Non
                     "point.name",
                     f"{name} is not a state, input or algebraic unknown of the plant",
                     where=f"point.{what}",
-                    hint=nearest(name, columns),
+                    hint=_rate_hint(name, columns) or nearest(name, columns),
                 )
     holds = {expression.strip() for expression, _ in text.hold}
     for name in text.find:
@@ -126,6 +127,13 @@ def _check_names(plant: Plant, text: PointText, columns: tuple[str, ...]) -> Non
             )
 
 
+def _rate_hint(name: str, columns: tuple[str, ...]) -> str:
+    for ending in ("_dot", "dot"):
+        if name.endswith(ending) and name.removesuffix(ending) in columns:
+            return f"a rate is written {name.removesuffix(ending)}'"
+    return ""
+
+
 def _add_rest(plant: Plant, text: PointText, fixed: dict[str, Node], rows: list[Row]) -> None:
     """Rates are zero; disturbances are at rest unless held or found."""
     graph = plant.graph
@@ -138,7 +146,8 @@ def _add_rest(plant: Plant, text: PointText, fixed: dict[str, Node], rows: list[
     for name in plant.inputs:
         variable = plant.variables[name]
         if variable.disturbance and name not in text.find and name not in holds:
-            fixed[name] = variable.rest if variable.rest is not None else zero
+            nothing = in_si(graph, zero, variable.unit)  # 0 degC, not 0 K
+            fixed[name] = variable.rest if variable.rest is not None else nothing
             residual = graph.sub(graph.var(name), fixed[name])
             rows.append(Row(label=f"{name} at rest", residual=residual))
 
@@ -155,6 +164,13 @@ def _add_holds(
     for index, (expression, value) in enumerate(text.hold):
         name = expression.strip().replace("′", "'").replace("’", "'")
         where = f"hold {name}"
+        if name in plant.parameters:
+            raise PointError(
+                "point.name",
+                f"{name} is a parameter, so it cannot be held",
+                where=where,
+                hint=f'give it another value in `set`: {{"set": {{"{name}": …}}}}',
+            )
         left = plant.expression(name, where)
         right = _held_value(plant, name, value, where)
         row = Row(label=where, residual=graph.sub(left, right), hold=index)

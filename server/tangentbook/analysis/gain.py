@@ -15,8 +15,6 @@ from flint import arb, arb_mat
 from scipy.sparse import csc_array
 from scipy.sparse.linalg import splu
 
-from tangentbook.analysis.settings import RANK_TOLERANCE
-
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
@@ -29,6 +27,7 @@ if TYPE_CHECKING:
 DENSE_STATES = 60
 CORRECTIONS = 12
 _SETTLED = arb(2) ** -150
+_KNOWN = arb(2) ** -40  # an entry known to fewer digits says that A is singular to those of the point
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -81,17 +80,10 @@ def _dense(model: LinearModel) -> list[list[arb]] | None:
         settled = a.solve(b)
     except ZeroDivisionError:
         return None
-    if not _regular(a):
+    entries = [settled[i, j] for i in range(len(states)) for j in range(len(inputs))]
+    if any(e.rad() > abs(e.mid()) * _KNOWN and not e.contains(0) for e in entries):
         return None
     return [[settled[i, j] for i in range(len(states))] for j in range(len(inputs))]
-
-
-def _regular(a: arb_mat) -> bool:
-    """Whether the matrix is invertible beyond the digits that a point is known to."""
-    size = a.nrows()
-    dense = np.array([[float(a[i, j].mid()) for j in range(size)] for i in range(size)])
-    scale = np.maximum(np.max(np.abs(dense), axis=1), 1e-300)
-    return float(np.linalg.cond(dense / scale[:, None])) < 1 / RANK_TOLERANCE**1.5
 
 
 def _refined(model: LinearModel) -> list[list[arb]] | None:

@@ -85,7 +85,10 @@ def _active(
 ) -> list[Pair]:
     flat = [node for pair in pairs for node in pair]
     found = Function(graph, names, flat).balls(values)
-    return [pair for k, pair in enumerate(pairs) if found[2 * k].overlaps(found[2 * k + 1])]
+    return [
+        pair
+        for k, pair in enumerate(pairs)
+        if pair[0] != pair[1] and found[2 * k].overlaps(found[2 * k + 1])]
 
 
 def _shown(graph: Graph, pair: Pair) -> str:
@@ -127,10 +130,9 @@ def _compare(
     ]
     shown = ", ".join(names)
     if jumps:
-        places = tuple(where[k] for k in jumps)
-        spans = [f"{where[k]}: {_span([arb(side[k]) for side in sides])}" for k in jumps]
-        why = _jump_text(shown, places, spans)
-        return Kinks(kind="jump", active=names, equations=places, why=why)
+        spans = {where[k]: [arb(side[k]) for side in sides] for k in jumps}
+        why = _jump_text(shown, spans)
+        return Kinks(kind="jump", active=names, equations=tuple(spans), why=why)
     bent = any(
         not arb(side[k]).overlaps(first[k]) for side in sides for k in range(count, len(outputs))
     )
@@ -149,18 +151,27 @@ def _compare(
     )
 
 
-def _jump_text(shown: str, places: Sequence[str], spans: Sequence[str]) -> str:
-    return (
-        f"{', '.join(places)} jump{'s' if len(places) == 1 else ''} where {shown} = 0: between "
-        "the values on its two sides lies a whole set of rest points (as with dry friction), not "
-        "an isolated point with a linear model; left minus right on the sides, in SI: "
-        f"{'; '.join(spans)}"
-    )
+def _jump_text(shown: str, spans: Mapping[str, Sequence[arb]]) -> str:
+    """What a jump means; a set of rest points only where zero lies between the sides."""
+    places = ", ".join(spans)
+    sides = "; ".join(f"{place}: {_span(values)}" for place, values in spans.items())
+    text = f"{places} jump{'s' if len(spans) == 1 else ''} where {shown} = 0, so there is no linear "
+    text += f"model there (left minus right on the sides, in SI: {sides})"
+    if any(_encloses_zero(values) for values in spans.values()):
+        text += (
+            "; zero lies between the sides, so a whole set of rest points is near, as with dry "
+            "friction, not an isolated one"
+        )
+    return text
+
+
+def _encloses_zero(values: Sequence[arb]) -> bool:
+    return any(v < 0 for v in values) and any(v > 0 for v in values)
 
 
 def _span(values: Sequence[arb]) -> str:
     middle = [float(v.mid()) for v in values]
-    return f"from {min(middle):.6g} to {max(middle):.6g}"
+    return f"{min(middle):.6g} to {max(middle):.6g}"
 
 
 def _decided(graph: Graph, passed: Sequence[Node], signs: dict[Pair, int]) -> list[object]:

@@ -13,6 +13,12 @@ START_SPREAD = (-1.5, 3.0)
 """Random starts lie within 10^-1.5 … 10^3 typical sizes (one declared unit if none is given, which
 is more often too small than too large); beyond, `typical` or a guess is called for."""
 
+WORST_MOVE = 1e-2
+"""A refinement that wanders further than this (relative) has left its candidate."""
+
+WORST_RADIUS = 1e-6
+"""A value whose digits still move by more than this (relative) is no point that was found."""
+
 SAME_POINT = 1e-9
 """Relative distance below which two solutions are one; near a fold two may be close."""
 
@@ -39,7 +45,7 @@ RESIDUAL_LIMIT = 1e-9
 """Largest residual relative to its own size that still counts as solved in double precision (a
 double root is only found to about the square root of the rounding error)."""
 
-REFINED_RESIDUAL_LIMIT = 1e-18
+REFINED_RESIDUAL_LIMIT = 1e-35
 """The same once the refinement has settled: 45 digits leave ample room."""
 
 RANK_TOLERANCE = 1e-9
@@ -60,6 +66,7 @@ then exact to about 2^-80, and its rounding to 2^-200."""
 SECOND_ROUTE_LIMIT = 1e-9
 REMAINDER_LIMIT = 1e-9
 POINT_LIMIT = 1e-9
+MULTIPLE_ROOT_LIMIT = 1e-3
 EIGENVALUE_LIMIT = 1e-9
 PRINTED_UNITS_LIMIT = 1e-8
 PRINTED_ZERO_LIMIT = 1e-12

@@ -17,17 +17,22 @@ if TYPE_CHECKING:
 
 
 def start_points(
-    typical: Vector, declared: npt.NDArray[np.bool_], guess: Vector, low: Vector, high: Vector
+    typical: Vector,
+    declared: npt.NDArray[np.bool_],
+    origin: Vector,
+    guess: Vector,
+    bounds: tuple[Vector, Vector],
 ) -> Iterator[Vector]:
     """Starts in a fixed order.
 
     Args:
         typical: (n,) typical sizes, SI.
         declared: (n,) whether the typical size was declared.
+        origin: (n,) where the declared unit has its zero (273.15 K for degC).
         guess: (n,) guessed values, NaN where there is none.
-        low: (n,) lower bounds, -inf for none.
-        high: (n,) upper bounds, inf for none.
+        bounds: (n,) lower bounds, -inf for none, and upper bounds, inf for none.
     """
+    low, high = bounds
     n = len(typical)
     guessed = ~np.isnan(guess)
     both = np.isfinite(low) & np.isfinite(high)
@@ -38,8 +43,8 @@ def start_points(
         values = np.where((values < low) | (values > high), inside, values)
         return np.where(guessed, guess, np.clip(values, low, high))
 
-    yield placed(np.where(declared, typical, 0.0))
-    yield placed(typical.copy())
+    yield placed(np.where(declared, typical, origin))
+    yield placed(np.where(declared, 0.0, origin) + typical)
     random = np.random.default_rng(20240229)  # any constant: the starts must be the same everywhere
     for k in range(_count(n) - 2):
         # every quantity on its own, or all of one magnitude; all positive every third time, as
@@ -48,7 +53,7 @@ def start_points(
         common = random.uniform(*START_SPREAD) + random.uniform(-0.5, 0.5, n)
         size = typical * 10.0 ** (common if k % 3 else spread)
         sign = np.where((random.uniform(size=n) < 0.6) | (k % 3 == 2), 1.0, -1.0)
-        start = np.where(both, bottom + width * random.uniform(size=n), size * sign)
+        start = np.where(both, bottom + width * random.uniform(size=n), origin + size * sign)
         # a guess is loosened: it may be a singular spot, and points near it are worth knowing
         reach = 0.1 * np.maximum(np.abs(guess), typical) * random.standard_normal(n)
         near = np.clip(guess + reach, low, high)

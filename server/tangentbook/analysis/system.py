@@ -183,9 +183,11 @@ def first_undefined(
         try:
             Function(graph, names, [node]).floats(values)
         except DomainError:
-            child = graph.children(node)[0]
+            children = graph.children(node)
+            child = children[1] if graph.op[node] == "div" else children[0]
             argument = Function(graph, names, [child]).floats(values)[0]
-            return f"{graph.op[node]} of an argument with the value {argument:.6g}"
+            what = "division by" if graph.op[node] == "div" else f"{graph.op[node]} of an argument with"
+            return f"{what} the value {argument:.6g}"
         except TypeError:  # a condition is no number
             continue
     return None

@@ -26,13 +26,15 @@ from tangentbook.analysis.settings import (
     RESIDUAL_LIMIT,
     SAME_POINT,
     SLOW_STARTS,
+    WORST_MOVE,
+    WORST_RADIUS,
 )
 from tangentbook.analysis.starts import start_points
 from tangentbook.analysis.system import System
 from tangentbook.calculus.evaluate import DomainError
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
 
     import numpy.typing as npt
 
@@ -107,10 +109,19 @@ def _found(plant: Plant, constants: Constants, conditions: Conditions) -> Operat
         return _no_point(search, attempts)
     for chosen in search.by_nearness(solved):
         refined = refine(system, chosen.q, search.typical)
-        limit = REFINED_RESIDUAL_LIMIT if refined.settled else RESIDUAL_LIMIT
-        if refined.residual <= limit:
+        if _holds(refined, chosen.q, search.typical):
             return _point(search, chosen, refined, solved)
     return _no_point(search, attempts)
+
+
+def _holds(refined: Refined, q: Vector, typical: Vector) -> bool:
+    """Whether the refinement ran onto the candidate and its conditions are met to all digits."""
+    if refined.residual > (REFINED_RESIDUAL_LIMIT if refined.settled else RESIDUAL_LIMIT):
+        return False
+    sizes = np.maximum(np.abs(q), typical)
+    known = [float(v.rad()) <= WORST_RADIUS * s for v, s in zip(refined.values, sizes, strict=True)]
+    moved = [abs(float(v.mid()) - x) for v, x in zip(refined.values, q, strict=True)]
+    return all(known) and bool(np.all(np.array(moved) <= WORST_MOVE * sizes))
 
 
 class _Search:
@@ -124,6 +135,7 @@ class _Search:
         self.declared = np.zeros(len(system.free), dtype=np.bool_)
         self.period = np.full(len(system.free), np.inf)
         self.guess = np.full(len(system.free), np.nan)
+        self.origin = np.zeros(len(system.free))
         self.low = np.full(len(system.free), -np.inf)
         self.high = np.full(len(system.free), np.inf)
         for k, name in enumerate(system.free):
@@ -134,6 +146,7 @@ class _Search:
                 self.declared[k] = True
             elif unit is not None:
                 self.typical[k] = float(unit.factor.p) / float(unit.factor.q) * np.pi**unit.pi_power
+                self.origin[k] = float(unit.offset.p) / float(unit.offset.q)
             if variable is not None and variable.period is not None:
                 self.period[k] = abs(float(value(variable.period).mid()))
             elif unit is None or not unit.dimension:
@@ -148,7 +161,7 @@ class _Search:
     def run(self) -> list[Attempt]:
         """All starts, in their fixed order."""
         found: list[Attempt] = []
-        for start in start_points(self.typical, self.declared, self.guess, self.low, self.high):
+        for start in self._starts():
             attempt = solve(self.system, start, self.typical, self.low, self.high)
             if attempt is not None:
                 found.append(attempt)
@@ -156,12 +169,17 @@ class _Search:
                 return found
         if any(a.solved for a in found):
             return found
-        starts = start_points(self.typical, self.declared, self.guess, self.low, self.high)
+        starts = self._starts()
         slow = (
             descend(self.system, start, self.typical, self.low, self.high)
             for start in islice(starts, SLOW_STARTS)
         )
         return found + [attempt for attempt in slow if attempt is not None]
+
+    def _starts(self) -> Iterator[Vector]:
+        return start_points(
+            self.typical, self.declared, self.origin, self.guess, (self.low, self.high)
+        )
 
     def by_nearness(self, solved: Sequence[Attempt]) -> Sequence[Attempt]:
         """The solutions by their distance from the guess, else in the order of the starts."""
@@ -267,7 +285,9 @@ def _undetermined(search: _Search, attempt: Attempt, loose: tuple[str, ...]) -> 
 
 def _assumed(search: _Search, name: str) -> arb:
     guess = search.system.conditions.guess.get(name)
-    return arb(0) if guess is None else search.system.constants.value(guess)
+    unit = search.system.plant.unit_of(name)
+    nothing = arb(0) if unit is None else arb(unit.offset)  # 0 degC, not 0 K
+    return nothing if guess is None else search.system.constants.value(guess)
 
 
 def _values(search: _Search, free: Sequence[arb]) -> dict[str, arb]:

@@ -134,12 +134,20 @@ def _maximum(a: Ball, b: Ball) -> Ball:
     return choose(less_equal(b, a), a, b)
 
 
+def divide(a: Ball, b: Ball) -> Ball:
+    """a / b; no value where the divisor is zero (series would raise instead)."""
+    try:
+        return a / b
+    except (ZeroDivisionError, ValueError):
+        return _nan_like(b if isinstance(b, arb_series) else a)
+
+
 def _atan2(y: Ball, x: Ball) -> Ball:
     head = arb.atan2(_head(y), _head(x))
     if isinstance(y, arb) and isinstance(x, arb):
         return head
     # the slope does not care for the branch: take it from a quotient that exists, keep the head
-    quotient = (y / x).atan() if not _head(x).contains(0) else -((x / y).atan())
+    quotient = divide(y, x).atan() if not _head(x).contains(0) else -(divide(x, y).atan())
     return quotient - _head(quotient) + head
 
 
@@ -251,6 +259,7 @@ FUNCTIONS: dict[str, Callable[..., object]] = {
     "abs": _abs,
     "sign": _sign,
     "atan2": _atan2,
+    "div": divide,
     "min": _minimum,
     "max": _maximum,
     "pow": power,

@@ -249,8 +249,11 @@ class _BallDialect(_Dialect):
     def constant(self, value: fmpq, index: int) -> str:  # noqa: ARG002 - the value is in the list
         return f"c[{index}]"
 
+    def operation(self, op: str, args: list[str]) -> str:
+        return f"f_div({args[0]},{args[1]})" if op == "div" else super().operation(op, args)
+
     def integer_power(self, a: str, n: int) -> str:
-        return f"1/f_ipow({a},{-n})" if n < 0 else f"f_ipow({a},{n})"
+        return f"f_div(1,f_ipow({a},{-n}))" if n < 0 else f"f_ipow({a},{n})"
 
 
 _CIRCULAR = ("sin", "cos", "tan")

@@ -317,6 +317,8 @@ class Graph:
         op = self.op[node]
         if op == "mul":
             return self.times(*args)
+        if op == "div" and self.is_zero(args[1]):
+            return self._node(op, *args)  # no value there; maybe in a branch that is not in force
         if op == "div" and self.is_zero(args[0]):
             return args[0]
         if op == "ipow":

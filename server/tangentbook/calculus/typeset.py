@@ -75,7 +75,7 @@ class _Style:
 
 
 class _LatexStyle(_Style):
-    times = r" \, "
+    times = r" \cdot "
 
     def name(self, name: str) -> str:
         return latex_name(name)
@@ -118,7 +118,7 @@ class _LatexStyle(_Style):
         return {"lt": r" \lt ", "le": r" \le ", "eq": " = ", "ne": r" \ne "}[op]
 
     def choice(self, condition: str, a: str, b: str) -> _Piece:
-        cases = rf"{a} & \text{{if }} {condition} \\ {b} & \text{{otherwise}}"
+        cases = rf"{a} & \text{{if }} {condition} \cr {b} & \text{{otherwise}}"
         return _Piece(rf"\begin{{cases}} {cases} \end{{cases}}", _ATOM)
 
 

@@ -25,6 +25,7 @@ ERRORS: dict[str, str] = {
     "limit.reply": "an answer is too long",
     "internal.crash": "a fault of the program: the worker raised what nobody foresaw",
     "internal.worker-died": "a fault of the program: the worker ended without an answer",
+    "unit.dimension": "a value of another kind than the declared unit",
     "unit.text": "a text is not a unit",
     "expression.length": "an expression is too long",
     "expression.character": "a character has no meaning in an expression",

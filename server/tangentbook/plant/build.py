@@ -269,8 +269,17 @@ def read_output(scope: Scope, item: DeclaredText, orders: dict[str, int]) -> Out
     node = scope.lower(parse_expression(text, where), where)
     _check_proper(scope, node, item.name, text, orders)
     unit = _unit(item.unit, where)
+    plain = _plain_unit(scope, text.strip())
     if unit is None:
-        unit = _plain_unit(scope, text.strip())
+        unit = plain
+    elif plain is not None and plain.dimension != unit.dimension:
+        raise DeclarationError(
+            "unit.dimension",
+            f"output {item.name} is {text.strip()}, which is in {plain.text}; {unit.text} is not of "
+            "that kind",
+            where=where,
+            hint="give the output a unit of the same kind (Hz and rpm count cycles, rad/s does not)",
+        )
     return Output(name=item.name, node=node, text=text.strip(), unit=unit, about=item.about)
 
 

@@ -155,6 +155,13 @@ class Plant:
         text = "" if declared is None else _per_text(unit.text, self.time.text, order)
         return replace(product(unit, self.clock, -order), text=text)
 
+    def output_unit(self, output: Output) -> Unit | None:
+        """The unit of an output; one that is just a quantity has that quantity's unit."""
+        if output.unit is not None:
+            return output.unit
+        name = self.graph.name_of(output.node)
+        return None if name is None else self.unit_of(name)
+
     @property
     def rates(self) -> tuple[str, ...]:
         """The highest rates, in the order of the states."""

@@ -31,7 +31,7 @@ if TYPE_CHECKING:
 # generic points for the rank test: enough that all of them being singular by chance is excluded
 GENERIC_POINTS = 4
 GENERIC_TRIES = 40
-RANK_TOLERANCE = 1e-9
+RANK_TOLERANCE = 1e-13
 # symbolic solution of a block is for the reader and stays readable only while it is small
 SOLVED_BLOCK = 3
 

@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING
 from tangentbook.errors import DeclarationError, nearest
 from tangentbook.plant.grammar import parse_leading
 from tangentbook.plant.lower import Lowering, in_si, no_rate
-from tangentbook.plant.units import Unit, parse_unit
+from tangentbook.plant.units import Dimension, Unit, parse_unit
 
 if TYPE_CHECKING:
     from collections.abc import Collection
@@ -73,7 +73,32 @@ def read_value(
                 hint="drop the unit, or write a number before it",
             )
         written = parse_unit(rest, where=where)
+        _check_kind(text, written, unit, where)
         return in_si(graph, node, written), written
     if used:
         return node, unit
     return in_si(graph, node, unit), unit
+
+
+def _check_kind(text: str, written: Unit, declared: Unit | None, where: str) -> None:
+    """A value must be of the kind of its name's declared unit.
+
+    Raises:
+        DeclarationError: it is not; cycles (Hz, rpm) are told apart from radians.
+    """
+    if declared is None or written.dimension == declared.dimension:
+        return
+    hint = f"give it in {declared.text} or another unit of that kind"
+    if without_cycles(written) == without_cycles(declared):
+        hint = "Hz and rpm count cycles, rad/s does not: multiply by 2*pi, as \"2*pi*50 rad/s\""
+    raise DeclarationError(
+        "unit.dimension",
+        f"{text!r} is not of the kind of {declared.text or 1}, the declared unit",
+        where=where,
+        hint=hint,
+    )
+
+
+def without_cycles(unit: Unit) -> Dimension:
+    """The dimension with cycles counted as numbers."""
+    return tuple((base, power) for base, power in unit.dimension if base != "cycle")

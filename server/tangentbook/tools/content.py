@@ -13,7 +13,7 @@ if TYPE_CHECKING:
 
 JSON = dict[str, Any]
 
-_FLOORS = {"point.second-route": 1e-12}
+_FLOORS = {"point.second-route": 1e-12, "point.residual": 1e-40}
 _FLOOR = 1e-20
 """Smaller disagreements are rounding of the 256-bit routes (or of the double-precision one)."""
 

@@ -91,7 +91,7 @@ def _block(
             f"{where} fix{'es' if len(equations) == 1 else ''} {', '.join(unknowns)}"
             f"{' together' if len(unknowns) > 1 else ''}, not in closed form; the derivatives "
             "follow by implicit differentiation, ",
-            Math(r"\mathrm{d}w = -F_w^{-1} (F_x\,\mathrm{d}x + F_u\,\mathrm{d}u)"),
+            Math(r"\mathrm{d}w = -F_w^{-1} (F_x \mathrm{d}x + F_u \mathrm{d}u)"),
             ".",
         )
     ]
@@ -198,10 +198,12 @@ def assembly(found: Linearization) -> list[Block]:
             ", ",
             Math(r"\partial w/\partial u = -F_w^{-1} F_u"),
             ", and the outputs y = g(w, x, u) give ",
-            Math(r"C = g_x + g_w\,\partial w/\partial x"),
+            Math(r"C = g_x + g_w \partial w/\partial x"),
             ", ",
-            Math(r"D = g_u + g_w\,\partial w/\partial u"),
-            ". A row of A for a state whose rate is itself a state is a row of the unit matrix.",
+            Math(r"D = g_u + g_w \partial w/\partial u"),
+            ". A row of A for a state whose rate is itself a state is, in SI, a row of the unit "
+            "matrix. An entry in SI becomes the printed one by the unit of its column over that of "
+            "its row (A and B: times the unit of time).",
         ),
     ]
     if found.kinks.kind == "single-valued":

@@ -9,10 +9,10 @@ from tangentbook.analysis.trim import NoPoint, OperatingPoint, find_point
 from tangentbook.tools.points import no_point_result, point_result, quantity
 from tangentbook.tools.tables import closest_table, point_table
 from tangentbook.tools.understood import point_text
-from tangentbook_reports import heading, para
+from tangentbook_reports import Code, heading, para, table
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Mapping, Sequence
 
     from tangentbook.contract.point import Point
     from tangentbook.plant.model import Plant
@@ -30,6 +30,7 @@ class Located:
     found: OperatingPoint | NoPoint
     entry: JSON
     title: str
+    overrides: Mapping[str, float | str]
 
 
 def locate(
@@ -46,7 +47,9 @@ def locate(
         else:
             entry = point_result(found, scales, findings, place=place)
         title = f"{ident}: {request.name}" if request.name else ident
-        located.append(Located(found=found, entry=entry, title=title))
+        located.append(
+            Located(found=found, entry=entry, title=title, overrides=request.set)
+        )
     return located
 
 
@@ -64,6 +67,12 @@ def point_section(located: Located) -> list[Block]:
         blocks += closest_table(entry)
         return blocks
     blocks.append(para(f"{entry['kind'].capitalize()}: all rates are zero."))
+    if located.overrides:
+        blocks.append(
+            para("Parameters of this configuration that differ from the plant as read below:")
+        )
+        rows = [[Code(name), str(value)] for name, value in located.overrides.items()]
+        blocks.append(table(["Parameter", "Value here"], rows, align="ll"))
     blocks += point_table(entry)
     return blocks
 
@@ -81,6 +90,10 @@ def _asked(point: Point) -> str:
         text = f"“{point.name}”, {text}"
     if point.find:
         text += f", {', '.join(point.find)} found"
+    if point.guess:
+        text += ", near " + ", ".join(f"{n} = {v}" for n, v in point.guess.items())
+    if point.within:
+        text += ", within bounds of " + ", ".join(point.within)
     if point.set:
         text += ", with " + ", ".join(f"{n} = {v}" for n, v in point.set.items())
     return text

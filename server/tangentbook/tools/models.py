@@ -15,6 +15,7 @@ from tangentbook.analysis.settings import (
     REMAINDER_LIMIT,
     SECOND_ROUTE_LIMIT,
 )
+from tangentbook.contract.codes import CHECKS
 from tangentbook.tools.numbers import plural, rounded, shown
 from tangentbook.tools.reread import reread_difference
 
@@ -194,6 +195,9 @@ def model_checks(
     )
     for code, confirmation, limit in routes:
         if confirmation is None:
+            findings.not_checked.append(
+                f"{ident}: {CHECKS[code]} (left out for larger plants and at switches)"
+            )
             continue
         if confirmation.value is None:
             findings.missing(code, confirmation.why, point=ident)

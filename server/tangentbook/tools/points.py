@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 from flint import arb
 
 from tangentbook.analysis.constants import exact_text
-from tangentbook.analysis.settings import POINT_LIMIT, REFINED_RESIDUAL_LIMIT, RESIDUAL_LIMIT
+from tangentbook.analysis.settings import MULTIPLE_ROOT_LIMIT, POINT_LIMIT, REFINED_RESIDUAL_LIMIT, RESIDUAL_LIMIT
 from tangentbook.tools.numbers import rounded, shown, shown_float
 from tangentbook.tools.scales import size
 
@@ -119,7 +119,9 @@ def _checks(point: OperatingPoint, scales: Scales, findings: Findings, ident: st
         refined = float(point.values[name].mid())
         scale = max(abs(refined), float(scales.per(name).mid()))
         worst = max(worst, abs(point.first[name] - refined) / scale)
-    findings.check("point.second-route", worst, POINT_LIMIT, point=ident)
+    # at a multiple root double precision keeps only a part of its digits
+    limit = MULTIPLE_ROOT_LIMIT if point.singular else POINT_LIMIT
+    findings.check("point.second-route", worst, limit, point=ident)
 
 
 def _cautions(point: OperatingPoint, scales: Scales, findings: Findings, ident: str) -> None:
@@ -220,13 +222,23 @@ def no_point_result(missing: NoPoint, scales: Scales, *, place: tuple[int, str, 
     if missing.closest:
         entry["closest"] = {
             n: {
-                "value": rounded(scales.value(n, arb(v)), 6),
+                "value": _rough(missing, scales, n, v),
                 "unit": scales.text(n),
                 "known": "exact" if n in missing.conditions.fixed else "measured",
             }
             for n, v in missing.closest.items()
         }
     return entry
+
+
+def _rough(missing: NoPoint, scales: Scales, name: str, value: float) -> float | int:
+    """A value of the closest approach: six digits, and 0 where only rounding is left."""
+    variable = missing.plant.variables.get(name)
+    typical = scales.per(name)
+    if variable is not None and variable.typical is not None:
+        typical = abs(missing.constants.value(variable.typical))
+    floor = float(typical.mid()) * 1e-9
+    return rounded(scales.value(name, arb(0 if abs(value) < floor else value)), 6)
 
 
 def sensitivity_result(

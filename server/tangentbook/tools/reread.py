@@ -28,11 +28,14 @@ def reread_difference(model: DeclaredModel) -> tuple[float, str]:
     found = model.found.model
     assert found is not None  # noqa: S101 - a declared model has one
     plant = model.scales.plant
-    units: dict[str, Unit | None] = {n: plant.unit_of(n) for n in (*model.states, *model.inputs)}
-    outputs: dict[str, Unit | None] = {o.name: o.unit for o in plant.outputs}
-    size = {name: _one(plant, unit) for name, unit in units.items()}
-    out = {name: _one(plant, unit) for name, unit in outputs.items()}
     clock = _one(plant, plant.clock)
+    size = {n: _size(plant, n, clock) for n in (*model.states, *model.inputs)}
+    out = {
+        o.name: _one(plant, o.unit)
+        if o.unit is not None
+        else _size(plant, plant.graph.name_of(o.node) or "", clock)
+        for o in plant.outputs
+    }
     worst = _Worst()
     per_time = {name: size[name] / clock for name in model.states}
     worst.matrix("A", model.A, (per_time, model.states), (size, model.states), found.rates)
@@ -41,7 +44,7 @@ def reread_difference(model: DeclaredModel) -> tuple[float, str]:
     worst.matrix("D", model.D, (out, model.outputs), (size, model.inputs), found.output_rows)
     values = model.found.point.values
     for name, value in zip((*model.states, *model.inputs), (*model.x0, *model.u0), strict=True):
-        worst.add(f"value of {name}", _read(plant, rounded(value), units[name]), values[name])
+        worst.add(f"value of {name}", _value(plant, name, rounded(value), size), values[name])
     return worst.value, worst.place
 
 
@@ -69,7 +72,7 @@ class _Worst:
                 self.add(f"{name}, {row} / {column}", again, value)
 
     def add(self, place: str, again: arb, value: arb) -> None:
-        if value.contains(0):
+        if value.contains(0) or again.is_zero():  # below the range of printed numbers
             return
         difference = float(abs(again / value - 1).upper())
         # ten digits are printed: only what goes beyond their rounding counts
@@ -82,6 +85,24 @@ def _read(plant: Plant, number: float, unit: Unit | None) -> arb:
     text = repr(number) if unit is None or not unit.text else f"{number!r} {unit.text}"
     node, _ = read_value(plant.graph, text, unit=unit, names=(), where="printed number")
     return Function(plant.graph, (), [node]).balls(())[0]
+
+
+def _value(plant: Plant, name: str, number: float, size: Mapping[str, arb]) -> arb:
+    variable = plant.variables.get(name)
+    if variable is None or variable.unit is None:
+        return arb(number) * size[name]
+    return _read(plant, number, variable.unit)
+
+
+def _size(plant: Plant, name: str, clock: arb) -> arb:
+    """The size of a quantity's unit; a rate without one of its own has its base's per time."""
+    variable = plant.variables.get(name)
+    if variable is not None and variable.unit is not None:
+        return _one(plant, variable.unit)
+    base = name.rstrip("'")
+    parent = plant.variables.get(base)
+    unit = parent.unit if parent is not None else None
+    return _one(plant, unit) / clock ** (len(name) - len(base))
 
 
 def _one(plant: Plant, unit: Unit | None) -> arb:

@@ -16,7 +16,7 @@ class Scales:
 
     def __init__(self, plant: Plant) -> None:
         self.plant = plant
-        self._outputs = {o.name: o.unit for o in plant.outputs}
+        self._outputs = {o.name: plant.output_unit(o) for o in plant.outputs}
         self.clock = size(plant.clock)
 
     def unit(self, name: str) -> Unit | None:
@@ -31,7 +31,7 @@ class Scales:
     def output_text(self, name: str) -> str | None:
         """The unit text of an output."""
         unit = self._outputs[name]
-        return None if unit is None else unit.text
+        return None if unit is None or not unit.text else unit.text
 
     def value(self, name: str, value: arb) -> arb:
         """A quantity in its declared unit (a level from its own zero)."""

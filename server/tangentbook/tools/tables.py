@@ -56,11 +56,14 @@ def closest_table(entry: JSON) -> list[Block]:
         [Code(name), shown_float(value["value"]), unit_text(value["unit"])]
         for name, value in entry["closest"].items()
     ]
+    title = (
+        "One of the points that meet the conditions (what is undetermined could be otherwise):"
+        if entry["reason"] == "undetermined"
+        else "Closest approach (not an operating point; largest residual relative to its row "
+        f"{entry.get('residual', 0):.1g}):"
+    )
     return [
-        para(
-            "Closest approach (not an operating point; largest residual relative to its row "
-            f"{entry.get('residual', 0):.1g}):"
-        ),
+        para(title),
         table(["Quantity", "Value", "Unit"], rows, align="lrl"),
     ]
 
@@ -76,9 +79,9 @@ def matrix_tables(model: DeclaredModel, entry: JSON, file: str) -> list[Block]:
             ", ",
             Math(r"\Delta u = u - u_0"),
             ": ",
-            Math(r"\Delta\dot{x} = f_0 + A\,\Delta x + B\,\Delta u"),
+            Math(r"\Delta\dot{x} = f_0 + A \Delta x + B \Delta u"),
             ", ",
-            Math(r"y = y_0 + C\,\Delta x + D\,\Delta u"),
+            Math(r"y = y_0 + C \Delta x + D \Delta u"),
             f". An entry is the unit of its row{per} (A, B) or the unit of its row (C, D), over "
             "the unit of its column.",
         )
@@ -179,8 +182,10 @@ def eigenvalue_table(stability: JSON, time: str) -> list[Block]:
     ]
     return [
         para(
-            "Computed twice; rightmost first. Time constant and period in the unit of time of the "
-            "plant. No verdict on stability is given here."
+            "Computed twice; rightmost first. Time constant (of decay, or of growth where the real "
+            "part is positive) and period in the unit of time of the plant. Radius: estimated "
+            "distance of the true value from the printed one. No verdict on stability is given "
+            "here."
         ),
         table(header, rows, align="rrrrrrr"),
     ]
