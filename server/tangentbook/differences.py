@@ -6,6 +6,7 @@ their printed digits: a difference of one unit in the last of them is called sof
 
 from __future__ import annotations
 
+import difflib
 import json
 import math
 import re
@@ -72,6 +73,10 @@ def of_values(
                     where=at, stated=stated.get(key, _ABSENT), found=found.get(key, _ABSENT)
                 )
     elif is_array(stated) and is_array(found):
+        by_code = _keyed(stated), _keyed(found)
+        if by_code[0] is not None and by_code[1] is not None:
+            yield from of_values(*by_code, pointer=pointer, firm=firm)
+            return
         pairs = zip_longest(stated, found, fillvalue=_ABSENT)
         for index, pair in enumerate(pairs):
             yield from of_values(*pair, pointer=pointer_to(pointer, index), firm=firm)
@@ -97,8 +102,7 @@ def of_lines(
         soft: whether numbers may differ in their last digit.
         ignore: lines that hold one of these texts differ for a reason that is shown elsewhere.
     """
-    pairs = zip_longest(stated.split("\n"), found.split("\n"))
-    for number, (old, new) in enumerate(pairs, start=1):
+    for number, old, new in _aligned(stated.split("\n"), found.split("\n")):
         if old == new or any(text in line for text in ignore for line in (old, new) if line):
             continue
         yield Difference(
@@ -107,6 +111,29 @@ def of_lines(
             found=_ABSENT if new is None else new,
             soft=soft and old is not None and new is not None and _lines_alike(old, new),
         )
+
+
+def _aligned(stated: list[str], found: list[str]) -> Iterator[tuple[int, str | None, str | None]]:
+    """Line number, stated and found line of every place that differs; None where one is missing."""
+    matcher = difflib.SequenceMatcher(a=stated, b=found, autojunk=False)
+    for tag, a, a_end, b, b_end in matcher.get_opcodes():
+        if tag != "equal":
+            for k, (old, new) in enumerate(zip_longest(stated[a:a_end], found[b:b_end])):
+                yield min(a + k, len(stated)) + 1, old, new
+
+
+def _keyed(items: list[Any]) -> dict[str, Any] | None:
+    """Records with a code (checks, cautions) by code and point, so that a missing one is named."""
+    keyed: dict[str, Any] = {}
+    for item in items:
+        if not is_object(item) or "code" not in item:
+            return None
+        base = "/".join(str(item[k]) for k in ("code", "point") if k in item)
+        key, count = base, 2
+        while key in keyed:
+            key, count = f"{base} ({count})", count + 1
+        keyed[key] = item
+    return keyed or None
 
 
 def _lines_alike(stated: str, found: str) -> bool:

@@ -8,10 +8,12 @@ from __future__ import annotations
 
 import itertools
 import json
+import math
 from copy import deepcopy
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
+from tangentbook.contract.base import one_line
 from tangentbook.contract.plain import MISSING, is_array, is_object, pointer_parts
 from tangentbook.contract.registry import tool_named
 from tangentbook.contract.requests import understand
@@ -89,6 +91,14 @@ def _misfit(error: TangentbookError, place: str) -> TangentbookError:
 def _laid_out(entry: SheetCall, name: str, path: Path) -> Iterator[Call]:
     """One call for every combination of the grid's values."""
     places = list(entry.over)
+    count = math.prod(len(values) for values in entry.over.values())
+    if count > SHEET_CALLS:
+        raise ReportError(
+            "sheet.call",
+            f"the grid `over` makes {count} calls, more than {SHEET_CALLS}",
+            where="over",
+            hint="give fewer values, or several sheets",
+        )
     for values in itertools.product(*entry.over.values()):
         arguments = deepcopy(entry.all_arguments)
         for place, value in zip(places, values, strict=True):
@@ -105,6 +115,7 @@ def _laid_out(entry: SheetCall, name: str, path: Path) -> Iterator[Call]:
 
 def _short(value: object) -> str:
     text = value if isinstance(value, str) else json.dumps(value, ensure_ascii=False)
+    text = one_line(text)
     return text if len(text) <= 40 else text[:39] + "…"
 
 

@@ -73,8 +73,10 @@ def test_points_fit(point: object) -> None:
     (trim,) = (tool for tool in TOOLS if tool.name == "trim")
     arguments = {"plant": BRIDGE, "point": point}
     trim.request.model_validate(arguments)
-    for published in (schema("trim"), input_schema(trim)):
-        assert fits(arguments, published)
+    assert fits(arguments, schema("trim"))
+    # a tool list offers only what this version handles
+    later = isinstance(point, dict) and bool({"frozen", "every"} & set(map(str, point)))
+    assert fits(arguments, input_schema(trim)) is not later
 
 
 @by_name

@@ -27,7 +27,9 @@ if TYPE_CHECKING:
 DENSE_STATES = 60
 CORRECTIONS = 12
 _SETTLED = arb(2) ** -150
-_KNOWN = arb(2) ** -40  # an entry known to fewer digits says that A is singular to those of the point
+_KNOWN = (
+    arb(2) ** -40
+)  # an entry known to fewer digits says that A is singular to those of the point
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -52,7 +54,8 @@ def dc_gain(model: LinearModel) -> Gain:
             "(an input that is kept on makes it grow without end)",
         )
     solve = _dense if len(states) <= DENSE_STATES else _refined
-    settled = solve(model) if states else [[] for _ in inputs]
+    empty: list[list[arb]] = [[] for _ in inputs]
+    settled = solve(model) if states else empty
     if settled is None:
         return Gain(
             matrix=None,

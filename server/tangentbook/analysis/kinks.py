@@ -88,7 +88,8 @@ def _active(
     return [
         pair
         for k, pair in enumerate(pairs)
-        if pair[0] != pair[1] and found[2 * k].overlaps(found[2 * k + 1])]
+        if pair[0] != pair[1] and found[2 * k].overlaps(found[2 * k + 1])
+    ]
 
 
 def _shown(graph: Graph, pair: Pair) -> str:
@@ -155,7 +156,9 @@ def _jump_text(shown: str, spans: Mapping[str, Sequence[arb]]) -> str:
     """What a jump means; a set of rest points only where zero lies between the sides."""
     places = ", ".join(spans)
     sides = "; ".join(f"{place}: {_span(values)}" for place, values in spans.items())
-    text = f"{places} jump{'s' if len(spans) == 1 else ''} where {shown} = 0, so there is no linear "
+    text = (
+        f"{places} jump{'s' if len(spans) == 1 else ''} where {shown} = 0, so there is no linear "
+    )
     text += f"model there (left minus right on the sides, in SI: {sides})"
     if any(_encloses_zero(values) for values in spans.values()):
         text += (

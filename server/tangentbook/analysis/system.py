@@ -186,7 +186,11 @@ def first_undefined(
             children = graph.children(node)
             child = children[1] if graph.op[node] == "div" else children[0]
             argument = Function(graph, names, [child]).floats(values)[0]
-            what = "division by" if graph.op[node] == "div" else f"{graph.op[node]} of an argument with"
+            what = (
+                "division by"
+                if graph.op[node] == "div"
+                else f"{graph.op[node]} of an argument with"
+            )
             return f"{what} the value {argument:.6g}"
         except TypeError:  # a condition is no number
             continue

@@ -135,7 +135,7 @@ def _maximum(a: Ball, b: Ball) -> Ball:
 
 
 def divide(a: Ball, b: Ball) -> Ball:
-    """a / b; no value where the divisor is zero (series would raise instead)."""
+    """A / b; no value where the divisor is zero (series would raise instead)."""
     try:
         return a / b
     except (ZeroDivisionError, ValueError):

@@ -324,9 +324,10 @@ def _split(name: str) -> tuple[str, str]:
     match = re.fullmatch(r"([^\W\d_]+)(\d+)", name)
     if match:
         return match.group(1), match.group(2)
-    match = re.fullmatch(r"([^\W\d_])([^\W_]{1,3})", name)
+    # two letters, or a capital and what it is of (Tm, Mw, Tin); words stay whole (fold, len)
+    match = re.fullmatch(r"([^\W\d_])([^\W_])|([A-Z])([a-z0-9]{1,3})", name)
     if match and name not in _GREEK:
-        return match.group(1), match.group(2)
+        return match.group(1) or match.group(3), match.group(2) or match.group(4)
     for greek in sorted(_GREEK, key=len, reverse=True):
         if len(greek) > 2 and name.startswith(greek) and name != greek:
             return greek, name[len(greek) :]

@@ -55,6 +55,20 @@ def _text(value: object) -> object:
     return value
 
 
+def one_line(text: str) -> str:
+    """A text on one line, with invisible characters shown: it cannot forge lines of its own."""
+    folded = " ".join(text.split())
+    return "".join(
+        f"\u27e8U+{ord(c):04X}\u27e9" if unicodedata.category(c).startswith("C") else c
+        for c in folded
+    )
+
+
+def _line(value: object) -> object:
+    value = _text(value)
+    return one_line(value) if isinstance(value, str) else value
+
+
 def _name(value: object) -> object:
     value = _text(value)
     if isinstance(value, str):
@@ -71,6 +85,9 @@ Scalar = Annotated[
 
 Text = Annotated[str, BeforeValidator(_text)]
 """Text of a stranger: NFC, bounded."""
+
+Line = Annotated[str, BeforeValidator(_line)]
+"""What something is called: one line, nothing invisible."""
 
 Name = Annotated[str, BeforeValidator(_name)]
 """A name of the plant, primes in one spelling."""

@@ -6,7 +6,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import BeforeValidator, ConfigDict, Field, model_validator
 
-from tangentbook.contract.base import Model, Name, Scalar, Text
+from tangentbook.contract.base import Line, Model, Name, Scalar, Text
 from tangentbook.contract.plain import is_array, is_object
 
 Texts = Annotated[tuple[Text, ...], BeforeValidator(lambda v: [v] if isinstance(v, str) else v)]
@@ -16,7 +16,7 @@ class Equation(Model):
     """One equation with its label and source."""
 
     is_: Text = Field(alias="is", description='"left = right"; a prime is d/dt')
-    label: Text = Field(default="", description="a short name for messages and the report")
+    label: Line = Field(default="", description="a short name for messages and the report")
     about: Text = ""
     source: Text = ""
     assumptions: Texts = ()
@@ -155,7 +155,7 @@ class Plant(Model):
 
     model_config = ConfigDict(json_schema_extra={"examples": [BRIDGE]})
 
-    name: Text = Field(min_length=1, description="what the plant is called")
+    name: Line = Field(min_length=1, description="what the plant is called")
     about: Text = ""
     field: Text = Field(
         default="", description="trade, selects cautions: flight, process, marine, …"

@@ -6,7 +6,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import BeforeValidator, Field, model_validator
 
-from tangentbook.contract.base import Model, Name, Scalar, Text
+from tangentbook.contract.base import Line, Model, Name, Scalar, Text
 from tangentbook.contract.plain import is_array, is_object
 
 
@@ -56,7 +56,7 @@ Names = Annotated[tuple[Name, ...], BeforeValidator(lambda v: [v] if isinstance(
 class Point(Model):
     """How an operating point is asked for; {} is all at rest."""
 
-    name: Text = ""
+    name: Line = ""
     hold: Annotated[tuple[Hold, ...], BeforeValidator(_hold)] = Field(
         default=(), description='name -> value, or {"is": expression, "equals": value}'
     )

@@ -135,8 +135,35 @@ def _line(detail: ErrorDetails, prefix: str) -> str:
         return f"{place} is not a field of this call"
     if detail["type"] == "missing":
         return f"{place} is missing"
+    expected = _EXPECTED.get(_field(detail["loc"]))
+    if expected is not None and detail["type"].endswith("_type"):
+        return f"{place}: {expected} is expected"
     message = str(detail["msg"]).removeprefix("Value error, ")
     return f"{place}: {message}"
+
+
+def _field(location: tuple[int | str, ...]) -> str:
+    """The innermost named field of a place."""
+    names = [str(part) for part in location if isinstance(part, str)]
+    return next((name for name in reversed(names) if name in _EXPECTED), "")
+
+
+_EXPECTED = {
+    "point": 'an object as {"hold": {"theta": "60 deg"}}, or a list of them,',
+    "equations": 'a list of texts "left = right"',
+    "hold": 'an object name -> value, as {"theta": "60 deg"},',
+    "guess": 'an object name -> value, as {"M": 9000},',
+    "within": 'an object name -> [lower, upper], as {"theta": ["0 deg", "90 deg"]},',
+    "also": 'a list, as ["dc gain"],',
+    "parameters": 'an object name -> value, as {"J": "2.4e5 kg m^2"},',
+    "states": "a list of names, or an object name -> unit or table,",
+    "inputs": "a list of names, or an object name -> unit or table,",
+    "outputs": "a list of names, or an object name -> expression,",
+    "algebraic": "a list of names, or an object name -> unit or table,",
+    "definitions": "an object name -> expression",
+    "set": "an object parameter -> value",
+    "limits": "[lower, upper], null for none,",
+}
 
 
 _UNION_LABELS = {"Plant", "PlantRef", "int", "float", "str", "tuple", "dict", "list"}

@@ -59,9 +59,21 @@ def schema(name: str) -> dict[str, Any]:
     return published
 
 
+_LATER = frozenset(
+    "settings tables numeric moving frozen least most every frequencies held bilinear".split()
+)
+"""Parts of the language that are read but not handled yet: a tool list offers none of them."""
+
+
 def input_schema(tool: Tool) -> dict[str, Any]:
     """The arguments of a tool as the list of tools shows them."""
     published = schema(tool.name)
+    for record in (published, *published.get("$defs", {}).values()):
+        properties: dict[str, Any] = record.get("properties", {})
+        for name in _LATER & properties.keys():
+            del properties[name]
+        if "also" in properties:
+            properties["also"]["items"] = {"const": "dc gain"}
     if tool.name != _FULL_PLANT:
         published["properties"]["plant"] = _SHORT_PLANT
     published.pop("description", None)  # the tool's own says more

@@ -6,7 +6,7 @@ from typing import Annotated, Any
 
 from pydantic import AfterValidator, ConfigDict, Field, model_validator
 
-from tangentbook.contract.base import Model, Text
+from tangentbook.contract.base import Line, Model, Text
 from tangentbook.contract.plain import is_array, is_number, is_object, pointer_parts
 
 _SHEET_EXAMPLE: dict[str, Any] = {
@@ -53,7 +53,7 @@ class SheetCall(Model):
 
     model_config = ConfigDict(extra="allow", protected_namespaces=())
 
-    name: Text = Field(default="", description="what the call is called in the summary")
+    name: Line = Field(default="", description="what the call is called in the summary")
     tool: Text = Field(description="a tool's name; its arguments stand beside it")
     arguments: dict[str, Any] = Field(
         default_factory=dict, description="the arguments, where they do not stand beside `tool`"

@@ -275,10 +275,10 @@ def read_output(scope: Scope, item: DeclaredText, orders: dict[str, int]) -> Out
     elif plain is not None and plain.dimension != unit.dimension:
         raise DeclarationError(
             "unit.dimension",
-            f"output {item.name} is {text.strip()}, which is in {plain.text}; {unit.text} is not of "
-            "that kind",
+            f"output {item.name} is {text.strip()}, which is in {plain.text}; {unit.text} is not "
+            "of that kind",
             where=where,
-            hint="give the output a unit of the same kind (Hz and rpm count cycles, rad/s does not)",
+            hint="give it a unit of the same kind (Hz and rpm count cycles, rad/s does not)",
         )
     return Output(name=item.name, node=node, text=text.strip(), unit=unit, about=item.about)
 

@@ -67,9 +67,20 @@ def names_in(program: Program) -> list[tuple[str, int]]:
     return [(step.text + "'" * step.count, step.at) for step in program if step.op == "name"]
 
 
+_OTHER_WORDS = {
+    **dict.fromkeys(("der", "ddt", "diff", "dot"), "a rate, written x' or d(x)/dt"),
+    **dict.fromkeys(("sat", "saturate", "saturation", "limit"), "clip(x, low, high)"),
+    "sgn": "sign",
+    "log2": "log(x)/log(2)",
+    "pow": "x^y",
+}
+
+
 def unknown_function(name: str, known: list[str], where: str, at: int) -> ExpressionError:
     """The error for a name before a bracket that is no function."""
     close = nearest(name, [*FUNCTIONS, *ALIASES, "if", *known])
+    if name in _OTHER_WORDS:
+        close = f"did you mean {_OTHER_WORDS[name]}?"
     return ExpressionError(
         "expression.function",
         f"{name} is not a function",

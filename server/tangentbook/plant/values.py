@@ -90,7 +90,7 @@ def _check_kind(text: str, written: Unit, declared: Unit | None, where: str) -> 
         return
     hint = f"give it in {declared.text} or another unit of that kind"
     if without_cycles(written) == without_cycles(declared):
-        hint = "Hz and rpm count cycles, rad/s does not: multiply by 2*pi, as \"2*pi*50 rad/s\""
+        hint = 'Hz and rpm count cycles, rad/s does not: multiply by 2*pi, as "2*pi*50 rad/s"'
     raise DeclarationError(
         "unit.dimension",
         f"{text!r} is not of the kind of {declared.text or 1}, the declared unit",

@@ -47,9 +47,7 @@ def locate(
         else:
             entry = point_result(found, scales, findings, place=place)
         title = f"{ident}: {request.name}" if request.name else ident
-        located.append(
-            Located(found=found, entry=entry, title=title, overrides=request.set)
-        )
+        located.append(Located(found=found, entry=entry, title=title, overrides=request.set))
     return located
 
 

@@ -7,7 +7,12 @@ from typing import TYPE_CHECKING, Any
 from flint import arb
 
 from tangentbook.analysis.constants import exact_text
-from tangentbook.analysis.settings import MULTIPLE_ROOT_LIMIT, POINT_LIMIT, REFINED_RESIDUAL_LIMIT, RESIDUAL_LIMIT
+from tangentbook.analysis.settings import (
+    MULTIPLE_ROOT_LIMIT,
+    POINT_LIMIT,
+    REFINED_RESIDUAL_LIMIT,
+    RESIDUAL_LIMIT,
+)
 from tangentbook.tools.numbers import rounded, shown, shown_float
 from tangentbook.tools.scales import size
 

@@ -115,21 +115,21 @@ def test_plain_text(text: str, printed: str) -> None:
 
 
 LATEX = {
-    "J*theta''": r"J \, \ddot{\theta}",
+    "J*theta''": r"J \cdot \ddot{\theta}",
     "a/b": r"\frac{a}{b}",
     "sqrt(a)": r"\sqrt{a}",
-    "abs(v)*v": r"\left|v\right| \, v",
+    "abs(v)*v": r"\left|v\right| \cdot v",
     "a^2": r"{a}^{2}",
-    "2.5e-9*a": r"2.5 \cdot 10^{-9} \, a",
-    "a*pi": r"a \, \pi",
+    "2.5e-9*a": r"2.5 \cdot 10^{-9} \cdot a",
+    "a*pi": r"a \cdot \pi",
     "log(a)": r"\ln\left(a\right)",
     "log10(a)": r"\log_{10}\left(a\right)",
     "asin(a)": r"\arcsin\left(a\right)",
     "atan2(a, b)": r"\operatorname{atan2}\left(a, b\right)",
     "a - (b - c)": r"a - \left(b - c\right)",
-    "(a + b)*c": r"\left(a + b\right) \, c",
+    "(a + b)*c": r"\left(a + b\right) \cdot c",
     "if(a < b, a, b)": (
-        r"\begin{cases} a & \text{if } a \lt b \\ b & \text{otherwise} \end{cases}"
+        r"\begin{cases} a & \text{if } a \lt b \cr b & \text{otherwise} \end{cases}"
     ),
 }
 
@@ -225,7 +225,7 @@ def test_named_intermediates_stand_for_themselves() -> None:
     inner = graph.mul(graph.var("a"), graph.var("b"))
     node = graph.unary("sin", inner)
     assert latex(graph, node, {inner: "w_{1}"}) == r"\sin\left(w_{1}\right)"
-    assert latex(graph, inner, {inner: "w_{1}"}) == r"a \, b"
+    assert latex(graph, inner, {inner: "w_{1}"}) == r"a \cdot b"
 
 
 @pytest.mark.parametrize(

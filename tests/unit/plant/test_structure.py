@@ -63,8 +63,10 @@ CASES: list[tuple[str, list[str], Parts, tuple[str, str, str, str]]] = [
         (
             "structure.no-unknowns",
             "equations",
-            "the equations hold no rate and no algebraic unknown: an equation with one new name at "
-            "its left is a definition",
+            (
+                "the equations hold no rate and no algebraic unknown: an equation with one new "
+                "name at its left is a definition"
+            ),
             "write a rate as x', or list what the equations determine under `algebraic`",
         ),
     ),
