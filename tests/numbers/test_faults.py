@@ -28,6 +28,7 @@ linearize = importlib.import_module("tangentbook.analysis.linearize")
 linear = importlib.import_module("tangentbook.analysis.linear")
 spectrum = importlib.import_module("tangentbook.analysis.spectrum")
 refine = importlib.import_module("tangentbook.analysis.refine")
+trim = importlib.import_module("tangentbook.analysis.trim")
 derive = importlib.import_module("tangentbook.calculus.derive")
 
 FAULT = arb("1.0001")
@@ -293,9 +294,20 @@ def test_a_wrong_eigenvalue_of_a_large_block_shows(monkeypatch: pytest.MonkeyPat
 
 
 def shifted(monkeypatch: pytest.MonkeyPatch, factor: str) -> None:
-    """Move every refined value of the point, after its residual was judged."""
+    """Move every refined value of the point, after it was judged; not those of the other route."""
+    values = trim._values
+
+    def wrong(search: Any, free: Any) -> Any:  # noqa: ANN401 - as passed
+        return values(search, [v * arb(factor) if float(v.rad()) > 0 else v for v in free])
+
+    monkeypatch.setattr(trim, "_values", wrong)
+
+
+def test_a_refinement_to_a_wrong_value_is_no_point(monkeypatch: pytest.MonkeyPatch) -> None:
+    """A value that does not meet its conditions is not given out at all."""
     ball = refine._ball
-    monkeypatch.setattr(refine, "_ball", lambda value, *rest: ball(value * arb(factor), *rest))
+    monkeypatch.setattr(refine, "_ball", lambda value, *rest: ball(value * arb("1.000001"), *rest))
+    assert call("trim", BRIDGE, AT_60)["outcome"] == "no-point"
 
 
 @pytest.mark.parametrize("factor", ["1.000001", "1.00001"])

@@ -75,7 +75,7 @@ def test_points_fit(point: object) -> None:
     trim.request.model_validate(arguments)
     assert fits(arguments, schema("trim"))
     # a tool list offers only what this version handles
-    later = isinstance(point, dict) and bool({"frozen", "every"} & set(map(str, point)))
+    later = isinstance(point, dict) and ("frozen" in point or "every" in point)
     assert fits(arguments, input_schema(trim)) is not later
 
 

@@ -11,6 +11,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
+from flint import arb
 
 from tangentbook.analysis.scaling import equilibrate
 from tangentbook.analysis.settings import RANK_TOLERANCE, RESIDUAL_LIMIT
@@ -19,9 +20,12 @@ from tangentbook.calculus.derive import gradients
 from tangentbook.calculus.evaluate import DomainError, Function
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     import numpy.typing as npt
 
     from tangentbook.analysis.system import System
+    from tangentbook.calculus.graph import Node
 
     Vector = npt.NDArray[np.float64]
     Matrix = npt.NDArray[np.float64]
@@ -143,12 +147,24 @@ def _full(system: System, q: Vector) -> tuple[Matrix, Vector]:
     position = {name: k for k, name in enumerate(columns)}
     partials = gradients(graph, rows, columns)
     entries = [(i, position[n], node) for i, row in enumerate(partials) for n, node in row.items()]
-    function = Function(graph, system.names, [*rows, *(node for _, _, node in entries)])
-    values = np.array(function.floats(system.point(q)))
+    function = Function(graph, system.names, [node for _, _, node in entries])
     matrix = np.zeros((len(rows), len(columns)))
-    for (i, j, _), value in zip(entries, values[len(rows) :], strict=True):
+    for (i, j, _), value in zip(entries, function.floats(system.point(q)), strict=True):
         matrix[i, j] = value
-    return matrix, values[: len(rows)]
+    return matrix, _unit_residual(system, rows, q)
+
+
+def _unit_residual(system: System, rows: Sequence[Node], q: Vector) -> Vector:
+    """The residuals scaled to largest 1, from balls: doubles may not see them at all."""
+    point = system.ball_point([arb(float(v)) for v in q])
+    values = Function(system.plant.graph, system.names, rows).balls(point)
+    values = [arb(0) if v.contains(0) else v.mid() for v in values]
+    largest = arb(0)
+    for value in values:
+        largest = largest.max(abs(value))
+    if not largest > 0:
+        return np.zeros(len(rows))
+    return np.array([float((v / largest).mid()) for v in values])
 
 
 def redundant(system: System, q: Vector) -> tuple[str, ...]:

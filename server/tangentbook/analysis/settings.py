@@ -13,6 +13,9 @@ START_SPREAD = (-1.5, 3.0)
 """Random starts lie within 10^-1.5 … 10^3 typical sizes (one declared unit if none is given, which
 is more often too small than too large); beyond, `typical` or a guess is called for."""
 
+RUN_OFF = 1e60
+"""A value this many typical sizes away was chased to infinity, not found."""
+
 WORST_MOVE = 1e-2
 """A refinement that wanders further than this (relative) has left its candidate."""
 

@@ -33,6 +33,7 @@ if TYPE_CHECKING:
 
 
 NEAR = 1e-3
+ROUNDING = arb(2) ** -100
 
 
 class System:
@@ -132,6 +133,15 @@ class System:
     def ball_residual(self, q: Sequence[arb]) -> list[arb]:
         """R over balls."""
         return self._residual.balls(self.ball_point(q))
+
+    def met(self, q: Sequence[arb]) -> bool:
+        """Whether zero lies within every row over the balls, or is missed by rounding only.
+
+        A row that merely becomes small (exp of a large negative number) is not met.
+        """
+        point = self.ball_point(q)
+        rows = zip(self._residual.balls(point), self._terms.balls(point), strict=True)
+        return all(r.contains(0) or abs(r) <= t * ROUNDING for r, t in rows)
 
     def ball_jacobian(self, q: Sequence[arb]) -> list[arb]:
         """The entries of J over balls."""

@@ -24,6 +24,7 @@ from tangentbook.analysis.settings import (
     PRECISION,
     REFINED_RESIDUAL_LIMIT,
     RESIDUAL_LIMIT,
+    RUN_OFF,
     SAME_POINT,
     SLOW_STARTS,
     WORST_MOVE,
@@ -109,16 +110,20 @@ def _found(plant: Plant, constants: Constants, conditions: Conditions) -> Operat
         return _no_point(search, attempts)
     for chosen in search.by_nearness(solved):
         refined = refine(system, chosen.q, search.typical)
-        if _holds(refined, chosen.q, search.typical):
+        if _holds(system, refined, chosen.q, search.typical):
             return _point(search, chosen, refined, solved)
     return _no_point(search, attempts)
 
 
-def _holds(refined: Refined, q: Vector, typical: Vector) -> bool:
+def _holds(system: System, refined: Refined, q: Vector, typical: Vector) -> bool:
     """Whether the refinement ran onto the candidate and its conditions are met to all digits."""
     if refined.residual > (REFINED_RESIDUAL_LIMIT if refined.settled else RESIDUAL_LIMIT):
         return False
+    if not system.met(refined.values):
+        return False
     sizes = np.maximum(np.abs(q), typical)
+    if np.any(np.abs(q) > RUN_OFF * typical):
+        return False
     known = [float(v.rad()) <= WORST_RADIUS * s for v, s in zip(refined.values, sizes, strict=True)]
     moved = [abs(float(v.mid()) - x) for v, x in zip(refined.values, q, strict=True)]
     return all(known) and bool(np.all(np.array(moved) <= WORST_MOVE * sizes))
