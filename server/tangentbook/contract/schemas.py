@@ -60,7 +60,19 @@ def schema(name: str) -> dict[str, Any]:
 
 
 _LATER = frozenset(
-    "settings tables numeric moving frozen least most every frequencies held bilinear".split()
+    [
+        "settings",
+        "tables",
+        "numeric",
+        "moving",
+        "frozen",
+        "least",
+        "most",
+        "every",
+        "frequencies",
+        "held",
+        "bilinear",
+    ]
 )
 """Parts of the language that are read but not handled yet: a tool list offers none of them."""
 
