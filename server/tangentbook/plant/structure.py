@@ -153,8 +153,9 @@ def _matching(rows: Sequence[Sequence[int]], columns: int) -> list[int]:
     """For each row the column it is matched with, -1 for none."""
     if not rows or not columns:
         return [-1] * len(rows)
-    indptr = np.cumsum([0, *(len(row) for row in rows)])
-    indices = np.array([column for row in rows for column in row], dtype=np.int64)
+    # the graph routines take 32-bit indices only
+    indptr = np.cumsum([0, *(len(row) for row in rows)], dtype=np.int32)
+    indices = np.array([column for row in rows for column in row], dtype=np.int32)
     pattern = csr_array((np.ones(len(indices)), indices, indptr), shape=(len(rows), columns))
     return [int(c) for c in maximum_bipartite_matching(pattern, perm_type="column")]
 
