@@ -5,9 +5,14 @@ from __future__ import annotations
 from typing import Any
 
 import pytest
+from flint import fmpq
 
 from published.calling import JSON, call
+from tangentbook.analysis.conditions import PointText, understand_point
+from tangentbook.contract.plant import Plant
 from tangentbook.errors import TangentbookError
+from tangentbook.plant import build_plant
+from tangentbook.tools.convert import plant_text
 
 
 def plant(*equations: str, **more: Any) -> JSON:  # noqa: ANN401 - fields of a plant
@@ -139,3 +144,19 @@ def test_the_gain_of_a_slow_plant_is_given() -> None:
     raw = plant("x' = -1e-14*x + y", "y' = -y + u", inputs=["u"])
     result = call("linearize", raw, {"hold": {"u": 1}}, also=["dc gain"])
     assert result["points"][0]["model"]["dc_gain"] == [[1e14], [1]]
+
+
+@pytest.mark.parametrize(
+    ("time", "value", "expected"),
+    [("s", "0.5 rad/s", fmpq(1, 2)), ("min", "0.5 rad/s", fmpq(30)), ("min", 30, fmpq(30))],
+)
+def test_a_rate_is_read_in_the_time_of_the_equations(
+    time: str, value: str | int, expected: fmpq
+) -> None:
+    """Where no unit contains time, rates are per `time`; a value with a unit is brought to that."""
+    raw = plant("a'' = -a' + T", states={"a": "rad"}, inputs=["T"], time=time)
+    understood = build_plant(plant_text(Plant.model_validate(raw)))
+    asked = understand_point(understood, PointText(hold=(("a'", value), ("T", 0))))
+    (row,) = (row for row in asked.rows if row.hold == 0)
+    graph = understood.graph
+    assert graph.value_of(graph.children(row.residual)[1]) == expected

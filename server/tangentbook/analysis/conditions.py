@@ -189,17 +189,21 @@ def _held_value(plant: Plant, name: str, value: Scalar, where: str) -> Node:
     known = unit is not None or name in plant.variables or name.rstrip("'") in plant.variables
     if not known and not isinstance(value, str):
         unit = ONE
-    return read_value(plant.graph, value, unit=unit, names=tuple(plant.parameters), where=where)[0]
+    return _read(plant, name, value, unit, where)
 
 
 def _value(plant: Plant, name: str, value: Scalar, where: str) -> Node:
-    return read_value(
-        plant.graph,
-        value,
-        unit=plant.unit_of(name),
-        names=tuple(plant.parameters),
-        where=where,
-    )[0]
+    return _read(plant, name, value, plant.unit_of(name), where)
+
+
+def _read(plant: Plant, name: str, value: Scalar, unit: Unit | None, where: str) -> Node:
+    """A value as a node; a rate with a unit of its own counts time as the equations do."""
+    node, written = read_value(
+        plant.graph, value, unit=unit, names=tuple(plant.parameters), where=where
+    )
+    if written is not unit and written is not None and written.has_time and name.endswith("'"):
+        return plant.graph.times(node, plant.graph.const(plant.per_clock(name)))
+    return node
 
 
 def _bounds(

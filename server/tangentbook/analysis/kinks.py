@@ -147,7 +147,8 @@ def _compare(
     return Kinks(
         kind="single-valued",
         active=names,
-        why=f"{shown} is zero at the point, and the derivatives on both sides of it agree",
+        why=f"{shown} {'is' if len(names) == 1 else 'are'} zero at the point, where the equations "
+        "switch, and the derivatives on all sides agree",
         partials=dict(zip(partials.nodes, first[count:], strict=True)),
     )
 

@@ -16,6 +16,8 @@ from tangentbook.plant.units import ONE, Unit, product
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
+    from flint import fmpq
+
     from tangentbook.calculus.graph import Graph, Node
     from tangentbook.plant.scope import Scope
 
@@ -149,11 +151,17 @@ class Plant:
         return next((o.unit for o in self.outputs if o.name == name), None)
 
     def rate_unit(self, base: str, order: int) -> Unit:
-        """unit(x) per time^order; the factor is in SI (per clock)."""
+        """unit(x) per time^order; the factor counts time as the equations do (per clock)."""
         declared = self.variables[base].unit
         unit = declared or ONE
         text = "" if declared is None else _per_text(unit.text, self.time.text, order)
-        return replace(product(unit, self.clock, -order), text=text)
+        kind = product(unit, self.time, -order).dimension
+        return replace(product(unit, self.clock, -order), text=text, dimension=kind)
+
+    def per_clock(self, name: str) -> fmpq:
+        """What a rate given in SI is multiplied by to count time as the equations do."""
+        order = len(name) - len(name.rstrip("'"))
+        return (self.time.factor / self.clock.factor) ** order
 
     def output_unit(self, output: Output) -> Unit | None:
         """The unit of an output; one that is just a quantity has that quantity's unit."""

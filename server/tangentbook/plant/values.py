@@ -86,7 +86,7 @@ def _check_kind(text: str, written: Unit, declared: Unit | None, where: str) -> 
     Raises:
         DeclarationError: it is not; cycles (Hz, rpm) are told apart from radians.
     """
-    if declared is None or written.dimension == declared.dimension:
+    if declared is None or not declared.text or written.dimension == declared.dimension:
         return
     hint = f"give it in {declared.text} or another unit of that kind"
     if without_cycles(written) == without_cycles(declared):
