@@ -23,8 +23,8 @@ from tangentbook.tools.models import (
 )
 from tangentbook.tools.numbers import plural, shown
 from tangentbook.tools.tables import eigenvalue_table, matrix_tables, vectors_table
-from tangentbook.tools.trim import answer_line, tolerances
-from tangentbook.tools.understood import NOT_CHECKED, plant_summary, understand_plant, unit_texts
+from tangentbook.tools.trim import answer_line
+from tangentbook.tools.understood import plant_summary, understand_plant, unit_texts, validity
 from tangentbook_reports import heading, para
 
 if TYPE_CHECKING:
@@ -64,16 +64,7 @@ def run(request: Linearize) -> Content:
         units=unit_texts(plant, scales),
         points=entries,
         findings=findings,
-        validity={
-            "amplitude": [],
-            "duration": None,
-            "parameters": tolerances(model),
-            "not_checked": [
-                *findings.not_checked,
-                *NOT_CHECKED,
-                "no verdict on stability was asked for or given",
-            ],
-        },
+        validity=validity(model, findings, "no verdict on stability was asked for or given"),
         sections=work.sections,
         derivation=work.derivation,
         files=work.files,

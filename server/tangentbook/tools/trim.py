@@ -18,12 +18,12 @@ from tangentbook.tools.located import (
 )
 from tangentbook.tools.numbers import shown_float
 from tangentbook.tools.points import quantity, sensitivity_result
-from tangentbook.tools.understood import NOT_CHECKED, plant_summary, understand_plant, unit_texts
+from tangentbook.tools.understood import plant_summary, understand_plant, unit_texts, validity
 from tangentbook_reports import Code, heading, para, table
 
 if TYPE_CHECKING:
     from tangentbook.contract.requests import Trim
-    from tangentbook.tools.content import JSON, Findings
+    from tangentbook.tools.content import Findings
     from tangentbook.tools.located import Located
     from tangentbook.tools.scales import Scales
     from tangentbook_reports import Block
@@ -53,26 +53,12 @@ def run(request: Trim) -> Content:
         units=unit_texts(plant, scales),
         points=entries,
         findings=findings,
-        validity={
-            "amplitude": [],
-            "duration": None,
-            "parameters": tolerances(model),
-            "not_checked": [*findings.not_checked, *NOT_CHECKED],
-        },
+        validity=validity(model, findings),
         sections=sections,
         derivation=derivation,
         files={},
         short="\n".join([*(point_line(p, scales) for p in points), *cautions]),
     )
-
-
-def tolerances(model: Any) -> JSON:  # noqa: ANN401 - the plant of the request
-    """The stated tolerances of the parameters."""
-    return {
-        name: {"tolerance": str(p.tolerance)}
-        for name, p in model.parameters.items()
-        if p.tolerance is not None
-    }
 
 
 def answer_line(located: Located, scales: Scales, findings: Findings) -> str:

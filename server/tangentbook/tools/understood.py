@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from tangentbook.plant.model import Plant
     from tangentbook.tools.content import JSON
 
-NOT_CHECKED = (
+_NOT_CHECKED = (
     "units were converted, not checked against each other term by term",
     "existence and uniqueness of the point were not proved",
     "the size of deviations for which the linear model holds was not examined",
@@ -55,6 +55,21 @@ def understand_plant(model: PlantModel) -> tuple[Plant, Scales, Findings]:
 def plant_summary(model: PlantModel, plant: Plant) -> JSON:
     """The `plant` of a result."""
     return {"name": plant.name, "id": plant_id(model), "roles": dict(plant.roles)}
+
+
+def validity(model: PlantModel, findings: Findings, *more: str) -> JSON:
+    """What an answer holds for (stated tolerances stand beside it), and what was not looked at."""
+    tolerances = {
+        name: {"tolerance": str(p.tolerance)}
+        for name, p in model.parameters.items()
+        if p.tolerance is not None
+    }
+    return {
+        "amplitude": [],
+        "duration": None,
+        "parameters": tolerances,
+        "not_checked": [*findings.not_checked, *_NOT_CHECKED, *more],
+    }
 
 
 def unit_texts(plant: Plant, scales: Scales) -> dict[str, str | None]:
