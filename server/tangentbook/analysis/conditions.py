@@ -59,7 +59,6 @@ class Conditions:
 
     columns: tuple[str, ...]
     fixed: Mapping[str, Node]
-    held: frozenset[str]
     free: tuple[str, ...]
     assumed: tuple[str, ...]
     rows: tuple[Row, ...]
@@ -82,13 +81,12 @@ def understand_point(plant: Plant, text: PointText) -> Conditions:
     rows = [Row(label=e.where, residual=e.residual) for e in plant.equations]
     open_rows = list(range(len(rows)))
     _add_rest(plant, text, fixed, rows)
-    held = _add_holds(plant, text, fixed, rows, open_rows)
+    _add_holds(plant, text, fixed, rows, open_rows)
     free = tuple(name for name in columns if name not in fixed)
     present = plant.graph.leaves([rows[k].residual for k in open_rows])
     return Conditions(
         columns=columns,
         fixed=fixed,
-        held=frozenset(held),
         free=tuple(n for n in free if n in present),
         assumed=tuple(n for n in free if n not in present),
         rows=tuple(rows),
@@ -158,9 +156,8 @@ def _add_holds(
     fixed: dict[str, Node],
     rows: list[Row],
     open_rows: list[int],
-) -> list[str]:
+) -> None:
     graph = plant.graph
-    held: list[str] = []
     for index, (expression, value) in enumerate(text.hold):
         name = expression.strip().replace("′", "'").replace("’", "'")
         where = f"hold {name}"
@@ -178,10 +175,8 @@ def _add_holds(
         rows.append(row)
         if plain in (*plant.states, *plant.inputs, *plant.algebraic) and plain not in fixed:
             fixed[str(plain)] = right
-            held.append(str(plain))
         else:
             open_rows.append(len(rows) - 1)
-    return held
 
 
 def _held_value(plant: Plant, name: str, value: Scalar, where: str) -> Node:

@@ -21,6 +21,7 @@ from flint import arb, arb_series
 
 from tangentbook.analysis.rates import NoBranchError, Rates
 from tangentbook.analysis.settings import DIFFERENCE_BITS
+from tangentbook.calculus.balls import largest_size
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
@@ -117,15 +118,8 @@ def by_differences(at: Surroundings, model: LinearModel) -> Confirmation:
 
 def _solves(rates: Rates, values: Sequence[arb]) -> bool:
     """Whether the values satisfy the original equations, as far as 256 bits can tell."""
-    limit = arb(2) ** -100 * (1 + _largest(values))
+    limit = arb(2) ** -100 * (1 + largest_size(values))
     return all(abs(r) < limit for r in rates.residuals(values))
-
-
-def _largest(values: Sequence[arb]) -> arb:
-    largest = arb(0)
-    for value in values:
-        largest = largest.max(abs(value))
-    return largest
 
 
 def by_remainder(at: Surroundings, model: LinearModel) -> Confirmation:

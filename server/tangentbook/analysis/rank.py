@@ -16,6 +16,7 @@ from flint import arb
 from tangentbook.analysis.scaling import equilibrate
 from tangentbook.analysis.settings import RANK_TOLERANCE, RESIDUAL_LIMIT
 from tangentbook.analysis.system import neighbours
+from tangentbook.calculus.balls import largest_size
 from tangentbook.calculus.derive import gradients
 from tangentbook.calculus.evaluate import DomainError, Function
 
@@ -159,9 +160,7 @@ def _unit_residual(system: System, rows: Sequence[Node], q: Vector) -> Vector:
     point = system.ball_point([arb(float(v)) for v in q])
     values = Function(system.plant.graph, system.names, rows).balls(point)
     values = [arb(0) if v.contains(0) else v.mid() for v in values]
-    largest = arb(0)
-    for value in values:
-        largest = largest.max(abs(value))
+    largest = largest_size(values)
     if not largest > 0:
         return np.zeros(len(rows))
     return np.array([float((v / largest).mid()) for v in values])

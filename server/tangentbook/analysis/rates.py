@@ -15,11 +15,12 @@ from typing import TYPE_CHECKING, Any
 
 from flint import arb, arb_mat, arb_series
 
+from tangentbook.calculus.balls import largest_size
 from tangentbook.calculus.derive import gradients
 from tangentbook.calculus.evaluate import Function
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Mapping, Sequence
+    from collections.abc import Mapping, Sequence
 
     from tangentbook.calculus.graph import Node
     from tangentbook.plant.model import Block, Plant
@@ -137,8 +138,8 @@ class Rates:
             step = (inverse * residual).mid()
             for k, place in enumerate(places):
                 values[place] = (values[place] - step[k, 0]).mid()
-            moved = _largest(step[k, 0] for k in range(size))
-            size_now = _largest(values[place] for place in places)
+            moved = largest_size(step[k, 0] for k in range(size))
+            size_now = largest_size(values[place] for place in places)
             if not moved.is_finite():  # the iteration left the domain
                 raise NoBranchError
             if moved <= size_now * _SETTLED:
@@ -234,13 +235,6 @@ class Rates:
             if not all(r.is_finite() for r in radius):
                 break
         raise NoBranchError
-
-
-def _largest(values: Iterable[arb]) -> arb:
-    largest = arb(0)
-    for value in values:
-        largest = largest.max(abs(value))
-    return largest
 
 
 def _inverse(stage: _Implicit, values: Sequence[arb]) -> arb_mat:

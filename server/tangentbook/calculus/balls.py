@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING, TypeAlias
 from flint import arb, arb_series
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Iterable
 
 Ball: TypeAlias = "arb | arb_series"
 Truth: TypeAlias = "bool | None"
@@ -149,6 +149,14 @@ def _atan2(y: Ball, x: Ball) -> Ball:
     # the slope does not care for the branch: take it from a quotient that exists, keep the head
     quotient = divide(y, x).atan() if not _head(x).contains(0) else -(divide(x, y).atan())
     return quotient - _head(quotient) + head
+
+
+def largest_size(values: Iterable[arb]) -> arb:
+    """The largest absolute value; 0 of none."""
+    largest = arb(0)
+    for value in values:
+        largest = largest.max(abs(value))
+    return largest
 
 
 def power(a: Ball, b: Ball) -> Ball:

@@ -175,10 +175,6 @@ class Plant:
         """The highest rates, in the order of the states."""
         return tuple(name for name in self.unknowns if name.endswith("'"))
 
-    def parameter_leaves(self) -> tuple[str, ...]:
-        """The parameters' names, in declared order."""
-        return tuple(self.parameters)
-
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Block:
