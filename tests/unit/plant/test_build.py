@@ -412,6 +412,6 @@ def test_declared_parameters_are_kept_with_text_and_unit() -> None:
     parameter = found.parameters["k"]
     assert (parameter.text, parameter.tolerance, parameter.about) == ("2 kN/m", "5 %", "stiffness")
     assert found.graph.value_of(parameter.value) == 2000
-    assert found.parameter_leaves() == ("k",)
+    assert tuple(found.parameters) == ("k",)
     assert found.unit_of("k") == parse_unit("kN/m")
     assert found.unit_of("nobody") is None
